@@ -1,0 +1,5 @@
+//! The integration tests, one binary so that they link once.
+//!
+//! - `support`: solve a circuit text and read values by name
+
+mod support;
