@@ -4,9 +4,12 @@
 //! `text` (syntax tree) → `circuit` (flat network) → `system` (stamps, pattern, values) →
 //! `solve` (factors, refinement) → `study` (point, sweep) → `render` → `cli`.
 
+pub mod circuit;
 pub mod diag;
 pub mod number;
 pub mod quantity;
+pub mod solve;
 pub mod source;
 pub mod study;
+pub mod system;
 pub mod text;

@@ -1,5 +1,11 @@
 //! Studies: a circuit and a question in, plain results out. Nothing here prints.
 
+pub mod engine;
+pub mod explain;
+pub mod point;
+pub mod sweep;
+
+use crate::diag::Diagnostic;
 use crate::quantity::Dimension;
 use num_complex::Complex64;
 
@@ -114,4 +120,13 @@ pub struct SweepHead {
     pub readings: Vec<(String, Dimension, bool)>,
     /// How many rows will come.
     pub rows: usize,
+}
+
+/// Why a study has no result.
+#[derive(Clone, Debug, PartialEq)]
+pub enum StudyError {
+    /// The circuit or the call is wrong.
+    Refused(Vec<Diagnostic>),
+    /// No solution exists that could be trusted.
+    NoSolution(Vec<Diagnostic>),
 }

@@ -1,0 +1,278 @@
+//! A circuit made ready to be solved at many frequencies.
+
+use crate::circuit::island::Regime;
+use crate::circuit::{
+    Circuit, Drive, ElementId, Fault, FormulaId, Law, Measure, NodeId, Phase, Values, judge,
+};
+use crate::number::{Ball, Balls};
+use crate::number::{ComplexTwofold, Field, FieldError};
+use crate::solve::{Pattern, SolveError, Solver, Trust};
+use crate::study::{StudyError, Value, explain};
+use crate::system::{System, Through};
+use num_complex::Complex64;
+
+/// Values whose relative radius is below this need no allowance of their own: it is far below
+/// what a double can show.
+const EXACT_ENOUGH: f64 = 1e-22;
+
+/// A circuit in one regime with everything that is kept from one frequency to the next.
+pub struct Engine<'c> {
+    circuit: &'c Circuit,
+    system: System,
+    solver: Option<Solver>,
+    /// The formulas to evaluate at each frequency, and after each solution.
+    of_frequency: Vec<FormulaId>,
+    of_solution: Vec<FormulaId>,
+    values: Values<Ball>,
+    frequency: Ball,
+    entries: Vec<Ball>,
+    rhs: Vec<Ball>,
+    exact_entries: Vec<ComplexTwofold>,
+    exact_rhs: Vec<ComplexTwofold>,
+    rounded: Vec<Complex64>,
+    solution: Vec<ComplexTwofold>,
+    error: Vec<f64>,
+}
+
+impl<'c> Engine<'c> {
+    /// Finds the equations and their pattern. Fails where they cannot have one solution.
+    pub fn new(circuit: &'c Circuit, regime: Regime) -> Result<Self, StudyError> {
+        let system = System::new(circuit, regime);
+        let found = explain::graph(circuit, &system, regime);
+        if !found.is_empty() {
+            return Err(StudyError::NoSolution(found));
+        }
+        let n = system.unknowns.len();
+        let pattern =
+            Pattern { n, column_start: system.column_start.clone(), row: system.row.clone() };
+        let solver = match n {
+            0 => None,
+            _ => Some(Solver::new(pattern).map_err(|error| {
+                StudyError::NoSolution(explain::singular(circuit, &system, None, &error, None))
+            })?),
+        };
+        let zero = Ball::exact(ComplexTwofold::ZERO);
+        let entries = system.row.len();
+        Ok(Engine {
+            circuit,
+            of_frequency: system.tape.of_phase(Phase::Frequency),
+            of_solution: system.tape.of_phase(Phase::Solution),
+            values: system.tape.evaluate_constants(&Balls),
+            frequency: zero,
+            entries: vec![zero; entries],
+            rhs: vec![zero; n],
+            exact_entries: vec![ComplexTwofold::ZERO; entries],
+            exact_rhs: vec![ComplexTwofold::ZERO; n],
+            rounded: vec![Complex64::default(); entries],
+            solution: vec![ComplexTwofold::ZERO; n],
+            error: vec![0.0; n],
+            system,
+            solver,
+        })
+    }
+
+    /// The equations.
+    pub fn system(&self) -> &System {
+        &self.system
+    }
+
+    /// Solves at one frequency and evaluates the readings.
+    pub fn solve(&mut self, frequency_hz: f64) -> Result<(), StudyError> {
+        self.frequency = Ball::exact(ComplexTwofold::from(Complex64::new(frequency_hz, 0.0)));
+        let tape = &self.system.tape;
+        tape.evaluate_phase(&Balls, &self.of_frequency, &self.frequency, &mut self.values, |_| {
+            Err(FieldError::Undecided)
+        });
+        self.system
+            .assemble(&Balls, &self.values, &mut self.entries, &mut self.rhs)
+            .map_err(|fault| self.refuse(fault, frequency_hz))?;
+        let exact = |balls: &[Ball], out: &mut [ComplexTwofold]| {
+            balls.iter().zip(out).for_each(|(ball, out)| *out = ball.centre);
+        };
+        exact(&self.entries, &mut self.exact_entries);
+        exact(&self.rhs, &mut self.exact_rhs);
+        for (rounded, entry) in self.rounded.iter_mut().zip(&self.exact_entries) {
+            *rounded = entry.to_complex();
+        }
+        if let Err(error) = self.factor_and_refine() {
+            return Err(self.explain(error, frequency_hz));
+        }
+        self.allow_for_inputs();
+        self.evaluate_readings();
+        Ok(())
+    }
+
+    fn refuse(&self, fault: Fault, frequency_hz: f64) -> StudyError {
+        // Formulas made for stamps carry the place of the value they were made from.
+        let mut circuit = self.circuit.clone();
+        circuit.tape = self.system.tape.clone();
+        let mut error = judge::fault(&circuit, fault);
+        error.message = format!("at {frequency_hz} Hz {}", error.message);
+        StudyError::Refused(vec![error])
+    }
+
+    fn factor_and_refine(&mut self) -> Result<Trust, SolveError> {
+        let Some(solver) = &mut self.solver else { return Ok(Trust::default()) };
+        solver.factor(&self.rounded)?;
+        solver.solve_refined(
+            &self.exact_entries,
+            &self.exact_rhs,
+            &mut self.solution,
+            &mut self.error,
+        )
+    }
+
+    fn explain(&mut self, error: SolveError, frequency_hz: f64) -> StudyError {
+        let null = self.solver.as_mut().map(Solver::null_vector);
+        StudyError::NoSolution(explain::singular(
+            self.circuit,
+            &self.system,
+            Some(frequency_hz),
+            &error,
+            null.as_deref(),
+        ))
+    }
+
+    /// Widens the bounds where values are known only to a radius (a sine, a measured law): the
+    /// change of the solution is A⁻¹·(δb − δA·x), estimated with two patterns of signs.
+    fn allow_for_inputs(&mut self) {
+        let loose = |ball: &Ball| ball.radius > EXACT_ENOUGH * ball.centre.norm();
+        if !self.entries.iter().chain(&self.rhs).any(loose) {
+            return;
+        }
+        let Some(solver) = &mut self.solver else { return };
+        let n = self.solution.len();
+        let mut off: Vec<f64> = self.rhs.iter().map(|ball| ball.radius).collect();
+        for column in 0..n {
+            let size = self.solution[column].norm();
+            for at in self.system.column_start[column]..self.system.column_start[column + 1] {
+                off[self.system.row[at]] += self.entries[at].radius * size;
+            }
+        }
+        for pattern in 0..2usize {
+            let sign = |i: usize| if (i >> pattern) & 1 == 0 { 1.0 } else { -1.0 };
+            let mut change: Vec<Complex64> =
+                off.iter().enumerate().map(|(i, r)| Complex64::new(sign(i) * r, 0.0)).collect();
+            solver.solve_in_place(&mut change);
+            for (error, change) in self.error.iter_mut().zip(&change) {
+                *error += 2.0 * change.norm();
+            }
+        }
+    }
+
+    fn evaluate_readings(&mut self) {
+        let mut values = std::mem::take(&mut self.values);
+        let which = std::mem::take(&mut self.of_solution);
+        let frequency = self.frequency;
+        // Measures read constants and admittances, which stand in `values` while it is written:
+        // they are all evaluated before the first formula of the solution.
+        self.values = values;
+        let measured: Vec<_> = which
+            .iter()
+            .map(|&id| match self.system.tape.get(id).operation {
+                crate::circuit::Operation::Measure(measure) => Some(self.measure(measure)),
+                _ => None,
+            })
+            .collect();
+        values = std::mem::take(&mut self.values);
+        for (&id, measured) in which.iter().zip(measured) {
+            match measured {
+                Some(result) => {
+                    values[id.index()] = result.map_err(|error| Fault { at: id, error });
+                }
+                None => {
+                    self.system.tape.evaluate_phase(&Balls, &[id], &frequency, &mut values, |_| {
+                        Err(FieldError::Undecided)
+                    })
+                }
+            }
+        }
+        self.values = values;
+        self.of_solution = which;
+    }
+
+    /// The value of a formula at the frequency solved last.
+    pub fn value(&self, id: FormulaId) -> Result<Ball, Fault> {
+        self.values[id.index()].clone()
+    }
+
+    /// Voltage of a node against the reference of its island.
+    pub fn node(&self, node: NodeId) -> Ball {
+        match self.system.of_node[node.index()] {
+            Some(unknown) => self.unknown(unknown),
+            None => Ball::exact(ComplexTwofold::ZERO),
+        }
+    }
+
+    fn unknown(&self, unknown: u32) -> Ball {
+        let at = unknown as usize;
+        Ball { centre: self.solution[at], radius: self.error[at] }
+    }
+
+    /// Left minus right of an element; `None` where nothing ties its ends.
+    pub fn drop(&self, id: ElementId) -> Option<Ball> {
+        let element = self.circuit.element(id);
+        self.between(element.left, element.right)
+    }
+
+    fn between(&self, a: NodeId, b: NodeId) -> Option<Ball> {
+        let tied = self.system.islands.same(a, b);
+        tied.then(|| Balls.sub(&self.node(a), &self.node(b)))
+    }
+
+    /// Current from left to right through an element.
+    pub fn current(&self, id: ElementId) -> Result<Ball, FieldError> {
+        match self.system.through[id.index()] {
+            Through::Unknown(unknown) => Ok(self.unknown(unknown)),
+            Through::Admittance(y) => {
+                let y = self.value(y).map_err(|fault| fault.error)?;
+                // An open capacitor between two islands at f = 0 carries nothing.
+                let drop = self.drop(id).unwrap_or(Ball::exact(ComplexTwofold::ZERO));
+                Ok(Balls.mul(&y, &drop))
+            }
+            Through::Given => match &self.circuit.element(id).law {
+                Law::CurrentSource(drive) => self.given(drive),
+                _ => Err(FieldError::Undecided),
+            },
+        }
+    }
+
+    fn given(&self, drive: &Drive) -> Result<Ball, FieldError> {
+        let value = |id| self.value(id).map_err(|fault: Fault| fault.error);
+        let mut sum = match drive.constant {
+            Some(id) => value(id)?,
+            None => Ball::exact(ComplexTwofold::ZERO),
+        };
+        for &(factor, measure) in &drive.terms {
+            sum = Balls.add(&sum, &Balls.mul(&value(factor)?, &self.measure(measure)?));
+        }
+        Ok(if drive.end.sign() < 0 { Balls.neg(&sum) } else { sum })
+    }
+
+    /// Absorbed complex power of an element.
+    pub fn power(&self, id: ElementId) -> Result<Ball, FieldError> {
+        let current = self.current(id)?;
+        let drop = self.drop(id).unwrap_or(Ball::exact(ComplexTwofold::ZERO));
+        let conjugate = Balls.function(crate::number::Function::Conj, &[current])?;
+        Ok(Balls.mul(&drop, &conjugate))
+    }
+
+    /// Any reading.
+    pub fn measure(&self, measure: Measure) -> Result<Ball, FieldError> {
+        match measure {
+            Measure::Volts(node, None) => Ok(self.node(node)),
+            Measure::Volts(node, Some(to)) => self.between(node, to).ok_or(FieldError::Domain),
+            Measure::Drop(id) => self.drop(id).ok_or(FieldError::Domain),
+            Measure::Amps(id) => self.current(id),
+            Measure::Power(id) => self.power(id),
+        }
+    }
+}
+
+impl From<Ball> for Value {
+    fn from(ball: Ball) -> Self {
+        let value = ball.centre.to_complex();
+        // Rounding to double moves each part by at most half a unit in the last place.
+        Value { value, error: ball.radius + 0.5 * f64::EPSILON * value.norm() }
+    }
+}

@@ -1,0 +1,135 @@
+//! Many frequencies, and values of parameters, one row each, delivered as they are computed.
+
+use crate::circuit::island::Regime;
+use crate::circuit::program::Program;
+use crate::circuit::{Circuit, Read};
+use crate::quantity::Dimension;
+use crate::study::engine::Engine;
+use crate::study::point::{missed, regime_of};
+use crate::study::{StudyError, SweepHead, SweepRow, Value};
+use num_complex::Complex64;
+use std::ops::ControlFlow;
+
+/// A parameter to vary: `count` values from `from` to `to`, evenly spaced, both included.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Vary {
+    /// The `let` to vary.
+    pub name: String,
+    /// First value, in SI units.
+    pub from: f64,
+    /// Last value, in SI units.
+    pub to: f64,
+    /// How many values.
+    pub count: usize,
+    /// Their dimension.
+    pub dimension: Dimension,
+}
+
+impl Vary {
+    fn value(&self, index: usize) -> f64 {
+        match index {
+            0 => self.from,
+            i if i + 1 == self.count => self.to,
+            i => self.from + (self.to - self.from) * i as f64 / (self.count - 1) as f64,
+        }
+    }
+}
+
+/// What to sweep.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Plan {
+    /// Frequencies in hertz, in the order wanted.
+    pub frequencies_hz: Vec<f64>,
+    /// Parameters to vary; the first is the outermost loop.
+    pub vary: Vec<Vary>,
+}
+
+/// What a sweep delivers.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Event<'e> {
+    /// Once, before all rows.
+    Head(&'e SweepHead),
+    /// One frequency.
+    Row(&'e SweepRow),
+}
+
+/// Sweeps a circuit and hands each row to `sink`, which may stop the sweep.
+pub fn run(
+    program: &mut Program,
+    plan: &Plan,
+    sink: &mut dyn FnMut(Event) -> ControlFlow<()>,
+) -> Result<(), StudyError> {
+    let combinations = plan.vary.iter().map(|v| v.count).product::<usize>();
+    let mut headed = false;
+    for combination in 0..combinations {
+        let mut varied = vec![0.0; plan.vary.len()];
+        let mut rest = combination;
+        for (value, vary) in varied.iter_mut().zip(&plan.vary).rev() {
+            *value = vary.value(rest % vary.count);
+            rest /= vary.count;
+        }
+        for (value, vary) in varied.iter().zip(&plan.vary) {
+            program.set(&vary.name, *value, vary.dimension);
+        }
+        let (circuit, found) = program.circuit();
+        let circuit = circuit.ok_or(StudyError::Refused(found))?;
+        if !headed {
+            headed = true;
+            let head = head(&circuit, plan, combinations);
+            if sink(Event::Head(&head)).is_break() {
+                return Ok(());
+            }
+        }
+        if sweep_one(&circuit, plan, varied, sink)?.is_break() {
+            return Ok(());
+        }
+    }
+    Ok(())
+}
+
+fn head(circuit: &Circuit, plan: &Plan, combinations: usize) -> SweepHead {
+    let read = |read: &Read| {
+        let formula = circuit.tape.get(read.value);
+        (read.name.clone(), formula.dimension, formula.real)
+    };
+    SweepHead {
+        varied: plan.vary.iter().map(|v| (v.name.clone(), v.dimension)).collect(),
+        readings: circuit.reads.iter().map(read).collect(),
+        rows: combinations * plan.frequencies_hz.len(),
+    }
+}
+
+fn sweep_one(
+    circuit: &Circuit,
+    plan: &Plan,
+    varied: Vec<f64>,
+    sink: &mut dyn FnMut(Event) -> ControlFlow<()>,
+) -> Result<ControlFlow<()>, StudyError> {
+    let mut engines: [Option<Engine>; 2] = [None, None];
+    let undetermined = Value { value: Complex64::new(f64::NAN, f64::NAN), error: f64::INFINITY };
+    let mut row = SweepRow {
+        varied,
+        frequency_hz: 0.0,
+        values: vec![undetermined; circuit.reads.len()],
+        missed: vec![false; circuit.reads.len()],
+    };
+    for &frequency_hz in &plan.frequencies_hz {
+        let regime = regime_of(frequency_hz);
+        let slot = &mut engines[usize::from(regime == Regime::Direct)];
+        let engine = match slot {
+            Some(engine) => engine,
+            None => slot.insert(Engine::new(circuit, regime)?),
+        };
+        engine.solve(frequency_hz)?;
+        row.frequency_hz = frequency_hz;
+        for (i, read) in circuit.reads.iter().enumerate() {
+            let value = engine.value(read.value).map_or(undetermined, Value::from);
+            row.values[i] = value;
+            row.missed[i] = !read.limits.is_empty() && !missed(engine, read, value).is_empty();
+        }
+        if sink(Event::Row(&row)).is_break() {
+            return Ok(ControlFlow::Break(()));
+        }
+    }
+    Ok(ControlFlow::Continue(()))
+}
