@@ -1,5 +1,11 @@
 //! The integration tests, one binary so that they link once.
 //!
+//! - `bad`: every faulty circuit is refused in the words kept beside it
+//! - `examples`: circuits of the scenario and of the docs
+//! - `tidy`: rules of the house
 //! - `support`: solve a circuit text and read values by name
 
+mod bad;
+mod examples;
 mod support;
+mod tidy;
