@@ -90,11 +90,7 @@ impl Exact {
         let re = BigRational::new(self.re.clone(), self.over.clone());
         let im = BigRational::new(self.im.clone(), self.over.clone());
         let over = least_common_multiple(re.denom(), im.denom());
-        Exact {
-            re: re.numer() * (&over / re.denom()),
-            im: im.numer() * (&over / im.denom()),
-            over,
-        }
+        Exact { re: re.numer() * (&over / re.denom()), im: im.numer() * (&over / im.denom()), over }
     }
 
     /// The denominator.

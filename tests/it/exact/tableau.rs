@@ -163,10 +163,11 @@ fn turns(network: &Network, unknowns: &Unknowns, index: usize) -> Row {
     let Law::Turns { transformer, turns } = &network.branches[index].law else {
         panic!("no winding of an ideal transformer");
     };
-    let same = network.branches.iter().enumerate().filter_map(|(other, branch)| match &branch.law {
-        Law::Turns { transformer: t, turns } if t == transformer => Some((other, turns)),
-        _ => None,
-    });
+    let same =
+        network.branches.iter().enumerate().filter_map(|(other, branch)| match &branch.law {
+            Law::Turns { transformer: t, turns } if t == transformer => Some((other, turns)),
+            _ => None,
+        });
     let all: Vec<_> = same.collect();
     let (first, first_turns) = all[0];
     if first == index {
@@ -294,9 +295,9 @@ fn solve_core(rows: &[Row], count: usize) -> Option<(Vec<(usize, Exact)>, Exact)
 
 /// A row times the least common denominator of its entries.
 fn integers(row: &Row, order: &[usize]) -> Vec<Gauss> {
-    let scale = row.values().fold(BigInt::one(), |scale, value| {
-        least_common_multiple(&scale, value.denominator())
-    });
+    let scale = row
+        .values()
+        .fold(BigInt::one(), |scale, value| least_common_multiple(&scale, value.denominator()));
     let entry = |column: &usize| match row.get(column) {
         Some(value) => value.scaled_to_integers(&scale),
         None => (BigInt::zero(), BigInt::zero()),
@@ -308,12 +309,10 @@ fn integers(row: &Row, order: &[usize]) -> Vec<Gauss> {
 fn smallest(matrix: &[Vec<Gauss>], step: usize) -> Option<(usize, usize)> {
     let size = matrix.len();
     let places = (step..size).flat_map(|row| (step..size).map(move |column| (row, column)));
-    places
-        .filter(|(row, column)| !is_zero(&matrix[*row][*column]))
-        .min_by_key(|(row, column)| {
-            let entry = &matrix[*row][*column];
-            entry.0.bits().max(entry.1.bits())
-        })
+    places.filter(|(row, column)| !is_zero(&matrix[*row][*column])).min_by_key(|(row, column)| {
+        let entry = &matrix[*row][*column];
+        entry.0.bits().max(entry.1.bits())
+    })
 }
 
 fn collect(
