@@ -43,6 +43,11 @@ impl Drawn {
     pub fn solve(&self) -> &ExactSolution {
         &self.solution
     }
+
+    /// How many elements the solution lists.
+    pub fn elements(&self) -> usize {
+        self.network.branches.iter().filter(|branch| branch.name.is_some()).count()
+    }
 }
 
 /// The circuit of a seed: always the same one, and never singular.
