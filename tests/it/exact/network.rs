@@ -97,4 +97,26 @@ impl Network {
         }
         references
     }
+
+    /// The same network with every value rounded to doubles.
+    pub fn rounded(&self) -> Self {
+        let mut network = self.clone();
+        for mutual in &mut network.mutuals {
+            mutual.impedance = mutual.impedance.rounded();
+        }
+        for branch in &mut network.branches {
+            match &mut branch.law {
+                Law::Impedance(value)
+                | Law::Admittance(value)
+                | Law::Voltage(value)
+                | Law::Current(value)
+                | Law::Winding { own: value, .. } => *value = value.rounded(),
+                Law::VoltageOf(terms) | Law::CurrentOf(terms) => {
+                    terms.iter_mut().for_each(|term| term.factor = term.factor.rounded());
+                }
+                Law::Turns { .. } | Law::Wire | Law::AmplifierInput | Law::AmplifierOutput => {}
+            }
+        }
+        network
+    }
 }

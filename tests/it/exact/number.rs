@@ -104,6 +104,16 @@ impl Exact {
         (&self.re * &factor, &self.im * factor)
     }
 
+    /// The number with both parts rounded to doubles.
+    pub fn rounded(&self) -> Self {
+        let part = |value: f64| {
+            let ratio = BigRational::from_float(value).expect("finite");
+            Exact { re: ratio.numer().clone(), im: BigInt::zero(), over: ratio.denom().clone() }
+        };
+        let value = self.to_c64();
+        (&part(value.re) + &part(value.im).times_j()).reduced()
+    }
+
     /// The nearest doubles.
     pub fn to_c64(&self) -> Complex64 {
         Complex64::new(quotient(&self.re, &self.over), quotient(&self.im, &self.over))
