@@ -1,5 +1,18 @@
 //! Numbers and the fields the stamps and formulas are written over.
 
+pub mod ball;
+pub mod balls;
+pub mod complex;
+mod elementary;
+#[cfg(test)]
+mod tests;
+pub mod twofold;
+
+pub use crate::number::ball::Ball;
+pub use crate::number::balls::Balls;
+pub use crate::number::complex::ComplexTwofold;
+pub use crate::number::twofold::Twofold;
+
 use crate::quantity::Decimal;
 use thiserror::Error;
 
