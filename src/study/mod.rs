@@ -1,5 +1,7 @@
 //! Studies: a circuit and a question in, plain results out. Nothing here prints.
 
+pub mod grid;
+
 use crate::quantity::Dimension;
 use num_complex::Complex64;
 

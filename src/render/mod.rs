@@ -1,0 +1,3 @@
+//! Results to text.
+
+pub mod number;
