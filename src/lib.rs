@@ -4,6 +4,7 @@
 //! `text` (syntax tree) → `circuit` (flat network) → `system` (stamps, pattern, values) →
 //! `solve` (factors, refinement) → `study` (point, sweep) → `render` → `cli`.
 
+pub mod cli;
 pub mod diag;
 pub mod number;
 pub mod quantity;

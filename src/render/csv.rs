@@ -199,30 +199,46 @@ mod tests {
 
     #[test]
     fn a_sweep_has_two_columns_a_reading() {
-        swept_as(Form::Polar, false, expect![[r#"
+        swept_as(
+            Form::Polar,
+            false,
+            expect![[r#"
             frequency_Hz,L_dock_H,out_V,out_deg,"max(a, b)_ohm","max(a, b)_deg",efficiency,efficiency_deg
             10000,0.00024,5,53.13010235415598,50,-90,0.5,0
             12345.5,0.00024,0.001,180,50,-90,0.5,0
-        "#]]);
-        swept_as(Form::Rect, false, expect![[r#"
+        "#]],
+        );
+        swept_as(
+            Form::Rect,
+            false,
+            expect![[r#"
             frequency_Hz,L_dock_H,out_re_V,out_im_V,"max(a, b)_re_ohm","max(a, b)_im_ohm",efficiency_re,efficiency_im
             10000,0.00024,3,4,0,-50,0.5,0
             12345.5,0.00024,-0.001,0,0,-50,0.5,0
-        "#]]);
-        swept_as(Form::Decibel, false, expect![[r#"
+        "#]],
+        );
+        swept_as(
+            Form::Decibel,
+            false,
+            expect![[r#"
             frequency_Hz,L_dock_H,out_dB,out_deg,"max(a, b)_dB","max(a, b)_deg",efficiency_dB,efficiency_deg
             10000,0.00024,13.979400086720377,53.13010235415598,33.979400086720375,-90,-6.020599913279624,0
             12345.5,0.00024,-60,180,33.979400086720375,-90,-6.020599913279624,0
-        "#]]);
+        "#]],
+        );
     }
 
     #[test]
     fn amplitudes_scale_volts_and_no_ohms() {
-        swept_as(Form::Rect, true, expect![[r#"
+        swept_as(
+            Form::Rect,
+            true,
+            expect![[r#"
             frequency_Hz,L_dock_H,out_re_V,out_im_V,"max(a, b)_re_ohm","max(a, b)_im_ohm",efficiency_re,efficiency_im
             10000,0.00024,4.242640687119286,5.656854249492381,0,-50,0.5,0
             12345.5,0.00024,-0.0014142135623730952,0,0,-50,0.5,0
-        "#]]);
+        "#]],
+        );
     }
 
     #[test]
@@ -254,6 +270,7 @@ mod tests {
             mismatch,,1.5e-16,0,1.5e-16,0,
             magnetic_energy,J,0.001234,0,0.001234,0,
             electric_energy,J,0.0009,0,0.0009,0,
-        "#]].assert_eq(&String::from_utf8(out).unwrap());
+        "#]]
+        .assert_eq(&String::from_utf8(out).unwrap());
     }
 }

@@ -215,16 +215,22 @@ mod tests {
 
     #[test]
     fn a_solution_is_one_object_in_the_documented_order() {
-        solved_as(false, expect![[r#"
+        solved_as(
+            false,
+            expect![[r#"
             {"schema":"bifilar.solve.1","circuit":"link.bfl","title":null,"frequency":85000.0,"amplitude":"rms","nodes":[{"name":"in","reference":"gnd","re":48.0,"im":0.0,"error":1e-14}],"elements":[{"name":"load","kind":"resistor","left":"bus","right":"keel","drop":{"re":24.0,"im":-9.0},"current":{"re":2.0,"im":-0.75},"power":{"re":54.75,"im":0.0}},{"name":"shield","kind":"capacitor","left":"bus","right":"gnd","drop":null,"current":{"re":0.0,"im":0.0},"power":{"re":0.0,"im":0.0}}],"readings":[{"name":"bus_voltage","unit":"V","re":24.0,"im":-9.0,"error":1e-13},{"name":"efficiency","unit":"","re":0.9125,"im":0.0,"error":1e-14}],"balance":{"delivered":{"re":60.0,"im":18.0},"absorbed":{"re":60.0,"im":18.0},"mismatch":1.5e-16},"notes":["one note"]}
-        "#]]);
+        "#]],
+        );
     }
 
     #[test]
     fn amplitudes_scale_volts_and_amperes_but_no_power() {
-        solved_as(true, expect![[r#"
+        solved_as(
+            true,
+            expect![[r#"
             {"schema":"bifilar.solve.1","circuit":"link.bfl","title":null,"frequency":85000.0,"amplitude":"peak","nodes":[{"name":"in","reference":"gnd","re":67.88225099390857,"im":0.0,"error":4.428791083045944e-14}],"elements":[{"name":"load","kind":"resistor","left":"bus","right":"keel","drop":{"re":33.941125496954285,"im":-12.727922061357857},"current":{"re":2.8284271247461903,"im":-1.0606601717798214},"power":{"re":54.75,"im":0.0}},{"name":"shield","kind":"capacitor","left":"bus","right":"gnd","drop":null,"current":{"re":0.0,"im":0.0},"power":{"re":0.0,"im":0.0}}],"readings":[{"name":"bus_voltage","unit":"V","re":33.941125496954285,"im":-12.727922061357857,"error":1.575192072542963e-13},{"name":"efficiency","unit":"","re":0.9125,"im":0.0,"error":1e-14}],"balance":{"delivered":{"re":60.0,"im":18.0},"absorbed":{"re":60.0,"im":18.0},"mismatch":1.5e-16},"notes":["one note"]}
-        "#]]);
+        "#]],
+        );
     }
 
     #[test]

@@ -44,16 +44,29 @@ impl Text {
 
     /// The number padded so that decimal points and units stand below each other.
     pub fn padded(&self, widths: Widths) -> String {
+        if self.unit == "°" {
+            return self.glued(widths);
+        }
         let left = widths.whole.saturating_sub(self.whole.width());
         let right = widths.fraction.saturating_sub(self.fraction.width());
-        let unit = widths.unit.saturating_sub(self.unit.width());
-        let gap = if widths.unit == 0 || self.unit == "°" { "" } else { " " };
         // The unit letter itself is lined up, so a prefix stands to the left of its column.
-        let (before, after) = if self.unit == "°" { (0, unit) } else { (unit, 0) };
+        let before = widths.unit.saturating_sub(self.unit.width());
+        let gap = if widths.unit == 0 { "" } else { " " };
         format!(
-            "{:left$}{}{}{:right$}{gap}{:before$}{}{:after$}",
-            "", self.whole, self.fraction, "", "", self.unit, ""
+            "{:left$}{}{}{:right$}{gap}{:before$}{}",
+            "", self.whole, self.fraction, "", "", self.unit
         )
+    }
+
+    /// The number padded so that decimal points stand below each other, its unit right behind it.
+    pub fn glued(&self, widths: Widths) -> String {
+        let left = widths.whole.saturating_sub(self.whole.width());
+        let gap = usize::from(widths.unit > 0 && self.unit != "°");
+        let room = widths.fraction + gap + widths.unit;
+        let gap = if self.unit.is_empty() || gap == 0 { "" } else { " " };
+        let used = self.fraction.width() + gap.len() + self.unit.width();
+        let right = room.saturating_sub(used);
+        format!("{:left$}{}{}{gap}{}{:right$}", "", self.whole, self.fraction, self.unit, "")
     }
 }
 
@@ -296,6 +309,9 @@ pub fn decibels(value: Complex64, is_power: bool) -> f64 {
 pub fn level(value: Complex64, error: f64, digits: usize, unit: &str, is_power: bool) -> Text {
     let unit = format!("dB{unit}");
     let size = value.norm();
+    if size == 0.0 && error == 0.0 {
+        return Text { whole: "-inf".to_owned(), fraction: String::new(), unit };
+    }
     if size <= error {
         return Text::unknown(&unit);
     }

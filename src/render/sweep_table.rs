@@ -1,7 +1,7 @@
 //! A sweep as a table whose rows are written as they come, in columns of fixed width.
 
 use crate::quantity::Dimension;
-use crate::render::number::{Text, Widths, exact};
+use crate::render::number::{Widths, exact};
 use crate::render::table::phasor;
 use crate::render::{Form, Style, unit_of};
 use crate::study::{SweepHead, SweepRow};
@@ -102,16 +102,21 @@ impl SweepTable {
     /// Appends one row, with the limits it missed at its end.
     pub fn row(&mut self, row: &SweepRow, out: &mut Vec<u8>) {
         let digits = self.exact_digits();
-        let mut cells = vec![[exact(row.frequency_hz, digits, "Hz"), Text::default()]];
+        let mut known = vec![exact(row.frequency_hz, digits, "Hz")];
         for (dimension, value) in self.varied.iter().zip(&row.varied) {
-            cells.push([exact(*value, digits, &dimension.to_string()), Text::default()]);
+            known.push(exact(*value, digits, &dimension.to_string()));
         }
+        let mut cells = Vec::new();
         for ((_, dimension, real), value) in self.readings.iter().zip(&row.values) {
             let shown = self.style.shown(*value, *dimension, row.frequency_hz);
             cells.push(phasor(shown, &unit_of(*dimension, *real), *real, self.style, None));
         }
         let mut line = String::new();
-        for (column, [first, second]) in self.columns.iter().zip(&cells) {
+        for (column, text) in self.columns.iter().zip(&known) {
+            line.push_str(&pad(&text.glued(column.first), column.width));
+            line.push_str(GAP);
+        }
+        for (column, [first, second]) in self.columns[known.len()..].iter().zip(&cells) {
             let cell = match column.second == Widths::default() {
                 true => first.padded(column.first),
                 false => {
@@ -153,23 +158,32 @@ mod tests {
 
     #[test]
     fn rows_stand_below_their_headings() {
-        swept_as(Form::Polar, expect![[r#"
-            frequency         L_dock            out                     max(a, b)               efficiency
-            ────────────────  ────────────────  ──────────────────────  ──────────────────────  ──────────────
-             10          kHz   240          µH    5.00000  V    53.13°   50.0000   Ω   -90.00°     0.500000
-             12.3455     kHz   240          µH    1.000   mV   180.0 °   50.0000   Ω   -90.00°     0.500000     MISSED: efficiency
-        "#]]);
-        swept_as(Form::Rect, expect![[r#"
-            frequency         L_dock            out                            max(a, b)                      efficiency
-            ────────────────  ────────────────  ─────────────────────────────  ─────────────────────────────  ──────────────
-             10          kHz   240          µH     3.00000  V    +j4.00000  V     0        Ω   -j50.0000   Ω     0.500000
-             12.3455     kHz   240          µH    -1.000   mV    +j0        V     0        Ω   -j50.0000   Ω     0.500000     MISSED: efficiency
-        "#]]);
-        swept_as(Form::Decibel, expect![[r#"
-            frequency         L_dock            out                    max(a, b)              efficiency
-            ────────────────  ────────────────  ─────────────────────  ─────────────────────  ──────────
-             10          kHz   240          µH    13.98 dBV    53.13°    33.98 dBΩ   -90.00°    -6.02 dB
-             12.3455     kHz   240          µH   -60.00 dBV   180.0 °    33.98 dBΩ   -90.00°    -6.02 dB  MISSED: efficiency
-        "#]]);
+        swept_as(
+            Form::Polar,
+            expect![[r#"
+                frequency         L_dock            out                     max(a, b)               efficiency
+                ────────────────  ────────────────  ──────────────────────  ──────────────────────  ──────────────
+                 10 kHz            240 µH             5.00000  V    53.13°   50.0000   Ω   -90.00°     0.500000
+                 12.3455 kHz       240 µH             1.000   mV   180.0°    50.0000   Ω   -90.00°     0.500000     MISSED: efficiency
+            "#]],
+        );
+        swept_as(
+            Form::Rect,
+            expect![[r#"
+                frequency         L_dock            out                            max(a, b)                      efficiency
+                ────────────────  ────────────────  ─────────────────────────────  ─────────────────────────────  ──────────────
+                 10 kHz            240 µH              3.00000  V    +j4.00000  V     0        Ω   -j50.0000   Ω     0.500000
+                 12.3455 kHz       240 µH             -1.000   mV    +j0        V     0        Ω   -j50.0000   Ω     0.500000     MISSED: efficiency
+            "#]],
+        );
+        swept_as(
+            Form::Decibel,
+            expect![[r#"
+                frequency         L_dock            out                    max(a, b)              efficiency
+                ────────────────  ────────────────  ─────────────────────  ─────────────────────  ──────────
+                 10 kHz            240 µH             13.98 dBV    53.13°    33.98 dBΩ   -90.00°    -6.02 dB
+                 12.3455 kHz       240 µH            -60.00 dBV   180.0°     33.98 dBΩ   -90.00°    -6.02 dB  MISSED: efficiency
+            "#]],
+        );
     }
 }

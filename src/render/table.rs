@@ -58,7 +58,7 @@ pub fn phasor(value: Value, unit: &str, real: bool, style: Style, scale: Scale) 
         }
         Form::Decibel => {
             let level = level(z, error, digits, unit, matches!(unit, "W" | "VA"));
-            let blank = real || level.whole == UNKNOWN;
+            let blank = real || level.whole == UNKNOWN || level.whole == "-inf";
             [level, if blank { Text::default() } else { angle(z, error, digits) }]
         }
     }
@@ -209,7 +209,7 @@ impl Page<'_> {
         self.text.push_str("Across and through (drop = left minus right, current left to right)\n");
         let drops = elements.iter().map(|e| match e.drop {
             Some(drop) => self.shown(drop, Dimension::VOLTAGE, false),
-            None => [Text { whole: "open".into(), ..Text::default() }, Text::default()],
+            None => [Text { whole: "undetermined".into(), ..Text::default() }, Text::default()],
         });
         let currents = elements.iter().map(|e| self.shown(e.current, Dimension::CURRENT, false));
         let columns = vec![
@@ -356,136 +356,152 @@ mod tests {
 
     #[test]
     fn a_solution_fits_a_plain_terminal() {
-        solved_as(Form::Polar, false, expect![[r#"
-            A small link
-            link.bfl at 85 kHz, rms amplitudes
+        solved_as(
+            Form::Polar,
+            false,
+            expect![[r#"
+                A small link
+                link.bfl at 85 kHz, rms amplitudes
 
-            Readings
-              reading       value                   limit
-              ────────────────────────────────────────────────────────
-              bus_voltage   25.6320   V  -20.56°
-              efficiency     0.912500               MISSED: least 0.95
+                Readings
+                  reading       value                   limit
+                  ────────────────────────────────────────────────────────
+                  bus_voltage   25.6320   V  -20.56°
+                  efficiency     0.912500               MISSED: least 0.95
 
-            Volts to gnd
-              node   voltage
-              ──────────────────────────
-              in      48.0000 V    0.00°
-              a      312      V  -89   °
+                Volts to gnd
+                  node   voltage
+                  ──────────────────────────
+                  in      48.0000 V    0.00°
+                  a      312      V  -89°
 
-            Volts to keel
-              node   voltage
-              ─────────────────────────
-              bus    25.6320 V  -20.56°
+                Volts to keel
+                  node   voltage
+                  ─────────────────────────
+                  bus    25.6320 V  -20.56°
 
-            Across and through (drop = left minus right, current left to right)
-              element   left → right   drop                    current
-              ────────────────────────────────────────────────────────────────────
-              drive     gnd → in         48.0000 V  180.00°    1.30504 A  -16.70°
-              load      bus → keel       25.6320 V  -20.56°    2.13600 A  -20.56°
-              shield    bus → gnd      open                    0       A
+                Across and through (drop = left minus right, current left to right)
+                  element   left → right   drop                            current
+                  ────────────────────────────────────────────────────────────────────────────
+                  drive     gnd → in                 48.0000 V  180.00°    1.30504 A  -16.70°
+                  load      bus → keel               25.6320 V  -20.56°    2.13600 A  -20.56°
+                  shield    bus → gnd      undetermined                    0       A
 
-            Power taken up
-              element   what it is       real         reactive
-              ────────────────────────────────────────────────────
-              drive     voltage source   -60.0000 W   -18.0000 var
-              load      resistor          54.7500 W     0      var
-              shield    capacitor          0      W     0      var
-                        sources give      60.0000 W    18.0000 var
-                        the rest takes    60.0000 W    18.0000 var
+                Power taken up
+                  element   what it is       real         reactive
+                  ────────────────────────────────────────────────────
+                  drive     voltage source   -60.0000 W   -18.0000 var
+                  load      resistor          54.7500 W     0      var
+                  shield    capacitor          0      W     0      var
+                            sources give      60.0000 W    18.0000 var
+                            the rest takes    60.0000 W    18.0000 var
 
-            Power balance   closes to 1.5e-16 of all powers added up
-            Highest drop    25.6320 V across load
-            Stored, mean    1.23 mJ magnetic, 900 µJ electric
-        "#]]);
+                Power balance   closes to 1.5e-16 of all powers added up
+                Highest drop    25.6320 V across load
+                Stored, mean    1.23 mJ magnetic, 900 µJ electric
+            "#]],
+        );
     }
 
     #[test]
     fn amplitudes_are_named_in_the_heading() {
-        solved_as(Form::Rect, true, expect![[r#"
-            A small link
-            link.bfl at 85 kHz, peak amplitudes, mean powers
+        solved_as(
+            Form::Rect,
+            true,
+            expect![[r#"
+                A small link
+                link.bfl at 85 kHz, peak amplitudes, mean powers
 
-            Readings
-              reading       value                      limit
-              ───────────────────────────────────────────────────────────
-              bus_voltage   33.9411   V  -j12.7279 V
-              efficiency     0.912500                  MISSED: least 0.95
+                Readings
+                  reading       value                      limit
+                  ───────────────────────────────────────────────────────────
+                  bus_voltage   33.9411   V  -j12.7279 V
+                  efficiency     0.912500                  MISSED: least 0.95
 
-            Volts to gnd
-              node   voltage
-              ─────────────────────────
-              in     67.8823 V    +j0 V
-              a       5      V  -j441 V
+                Volts to gnd
+                  node   voltage
+                  ─────────────────────────
+                  in     67.8823 V    +j0 V
+                  a       5      V  -j441 V
 
-            Volts to keel
-              node   voltage
-              ─────────────────────────────
-              bus    33.9411 V  -j12.7279 V
+                Volts to keel
+                  node   voltage
+                  ─────────────────────────────
+                  bus    33.9411 V  -j12.7279 V
 
-            Across and through (drop = left minus right, current left to right)
-              element   left → right   drop                       current
-              ─────────────────────────────────────────────────────────────────────────────
-              drive     gnd → in        -67.8823 V   +j0      V   1.76777 A  -j530.330   mA
-              load      bus → keel       33.9411 V  -j12.7279 V   2.82843 A    -j1.06066  A
-              shield    bus → gnd      open                       0       A    +j0        A
+                Across and through (drop = left minus right, current left to right)
+                  elemen   left →   drop                               current
+                  t        right
+                  ──────────────────────────────────────────────────────────────────────────────
+                  drive    gnd →             -67.8823 V   +j0      V   1.76777 A  -j530.330   mA
+                           in
+                  load     bus →              33.9411 V  -j12.7279 V   2.82843 A    -j1.06066  A
+                           keel
+                  shield   bus →    undetermined                       0       A    +j0        A
+                           gnd
 
-            Power taken up
-              element   what it is       real         reactive
-              ────────────────────────────────────────────────────
-              drive     voltage source   -60.0000 W   -18.0000 var
-              load      resistor          54.7500 W     0      var
-              shield    capacitor          0      W     0      var
-                        sources give      60.0000 W    18.0000 var
-                        the rest takes    60.0000 W    18.0000 var
+                Power taken up
+                  element   what it is       real         reactive
+                  ────────────────────────────────────────────────────
+                  drive     voltage source   -60.0000 W   -18.0000 var
+                  load      resistor          54.7500 W     0      var
+                  shield    capacitor          0      W     0      var
+                            sources give      60.0000 W    18.0000 var
+                            the rest takes    60.0000 W    18.0000 var
 
-            Power balance   closes to 1.5e-16 of all powers added up
-            Highest drop    36.2491 V across load
-            Stored, mean    1.23 mJ magnetic, 900 µJ electric
-        "#]]);
+                Power balance   closes to 1.5e-16 of all powers added up
+                Highest drop    36.2491 V across load
+                Stored, mean    1.23 mJ magnetic, 900 µJ electric
+            "#]],
+        );
     }
 
     #[test]
     fn levels_are_in_decibels() {
-        solved_as(Form::Decibel, false, expect![[r#"
-            A small link
-            link.bfl at 85 kHz, rms amplitudes
+        solved_as(
+            Form::Decibel,
+            false,
+            expect![[r#"
+                A small link
+                link.bfl at 85 kHz, rms amplitudes
 
-            Readings
-              reading       value                 limit
-              ──────────────────────────────────────────────────────
-              bus_voltage   28.18 dBV  -20.56°
-              efficiency    -0.80  dB             MISSED: least 0.95
+                Readings
+                  reading       value                 limit
+                  ──────────────────────────────────────────────────────
+                  bus_voltage   28.18 dBV  -20.56°
+                  efficiency    -0.80  dB             MISSED: least 0.95
 
-            Volts to gnd
-              node   voltage
-              ─────────────────────────
-              in     33.62 dBV    0.00°
-              a      49.88 dBV  -89   °
+                Volts to gnd
+                  node   voltage
+                  ─────────────────────────
+                  in     33.62 dBV    0.00°
+                  a      49.88 dBV  -89°
 
-            Volts to keel
-              node   voltage
-              ─────────────────────────
-              bus    28.18 dBV  -20.56°
+                Volts to keel
+                  node   voltage
+                  ─────────────────────────
+                  bus    28.18 dBV  -20.56°
 
-            Across and through (drop = left minus right, current left to right)
-              element   left → right   drop                    current
-              ───────────────────────────────────────────────────────────────────
-              drive     gnd → in         33.62 dBV  180.00°    2.31 dBA  -16.70°
-              load      bus → keel       28.18 dBV  -20.56°    6.59 dBA  -20.56°
-              shield    bus → gnd      open                    ?    dBA
+                Across and through (drop = left minus right, current left to right)
+                  element   left → right   drop                            current
+                  ──────────────────────────────────────────────────────────────────────────────
+                  drive     gnd → in                 33.62 dBV  180.00°       2.31 dBA  -16.70°
+                  load      bus → keel               28.18 dBV  -20.56°       6.59 dBA  -20.56°
+                  shield    bus → gnd      undetermined                    -inf    dBA
 
-            Power taken up
-              element   what it is       real         reactive
-              ────────────────────────────────────────────────────
-              drive     voltage source   -60.0000 W   -18.0000 var
-              load      resistor          54.7500 W     0      var
-              shield    capacitor          0      W     0      var
-                        sources give      60.0000 W    18.0000 var
-                        the rest takes    60.0000 W    18.0000 var
+                Power taken up
+                  element   what it is       real         reactive
+                  ────────────────────────────────────────────────────
+                  drive     voltage source   -60.0000 W   -18.0000 var
+                  load      resistor          54.7500 W     0      var
+                  shield    capacitor          0      W     0      var
+                            sources give      60.0000 W    18.0000 var
+                            the rest takes    60.0000 W    18.0000 var
 
-            Power balance   closes to 1.5e-16 of all powers added up
-            Highest drop    25.6320 V across load
-            Stored, mean    1.23 mJ magnetic, 900 µJ electric
-        "#]]);
+                Power balance   closes to 1.5e-16 of all powers added up
+                Highest drop    25.6320 V across load
+                Stored, mean    1.23 mJ magnetic, 900 µJ electric
+            "#]],
+        );
     }
 }
