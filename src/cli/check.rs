@@ -17,7 +17,6 @@ use clap::Args;
 ///
 /// Example: bifilar check charger.bfl
 #[derive(Args, Debug)]
-#[command(verbatim_doc_comment)]
 pub struct CheckArgs {
     #[command(flatten)]
     common: CommonArgs,

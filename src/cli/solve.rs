@@ -17,7 +17,6 @@ use clap::Args;
 ///
 /// Example: bifilar solve charger.bfl --at 85kHz --read "volts(bus)"
 #[derive(Args, Debug)]
-#[command(verbatim_doc_comment)]
 pub struct SolveArgs {
     #[command(flatten)]
     common: CommonArgs,

@@ -18,9 +18,9 @@ use std::io::{self, IsTerminal};
 /// several nest, the first outermost.
 ///
 /// Example: bifilar sweep charger.bfl --from 10kHz --to 1MHz --per-decade 200
+///
 /// Example: bifilar sweep charger.bfl --at 85kHz --vary k=0.1..0.3:21
 #[derive(Args, Debug)]
-#[command(verbatim_doc_comment)]
 pub struct SweepArgs {
     #[command(flatten)]
     common: CommonArgs,

@@ -1,6 +1,7 @@
 //! Results to text: one renderer a file behind [`Render`]. Nothing here solves or prints.
 
 pub mod check;
+pub mod columns;
 pub mod csv;
 pub mod json;
 pub mod number;

@@ -1,8 +1,8 @@
 //! A sweep as a table whose rows are written as they come, in columns of fixed width.
 
 use crate::quantity::Dimension;
+use crate::render::columns::phasor;
 use crate::render::number::{Widths, exact};
-use crate::render::table::phasor;
 use crate::render::{Form, Style, unit_of};
 use crate::study::{SweepHead, SweepRow};
 use unicode_width::UnicodeWidthStr;
