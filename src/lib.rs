@@ -7,6 +7,7 @@
 pub mod diag;
 pub mod number;
 pub mod quantity;
+pub mod solve;
 pub mod source;
 pub mod study;
 pub mod text;
