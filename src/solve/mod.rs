@@ -118,9 +118,9 @@ impl Solver {
         check_structure(&pattern)?;
         let order =
             |order| Lu::new(&pattern.column_start, &pattern.row, order).map_err(SolveError::from);
-        let lu = order(Order::Symmetric)?;
+        let lu = order(Order::Column)?;
         let rival = if pattern.n >= limits::LEAST_SIZE_FOR_ORDER_TRIAL {
-            Some(order(Order::Column)?)
+            Some(order(Order::Symmetric)?)
         } else {
             None
         };
@@ -165,13 +165,30 @@ impl Solver {
         Ok(Health { pivot_ratio, growth: pivots.largest_in_u / largest, fill: self.lu.fill() })
     }
 
-    /// Keeps the column order with the sparser factors.
+    /// Keeps the column order with the sparser factors. The symmetric one gives far more fill once
+    /// pivots leave the diagonal, so large systems try it only where they should not.
     fn settle_order(&mut self) {
         let Some(mut rival) = self.rival.take() else { return };
+        if self.pattern.n > limits::LARGEST_SIZE_FOR_ORDER_TRIAL && !self.diagonal_leads() {
+            return;
+        }
         let factored = rival.factor(&self.pattern.column_start, &self.pattern.row, &self.scaled);
         if factored.is_ok() && rival.fill() < self.lu.fill() {
             self.lu = rival;
         }
+    }
+
+    /// The diagonal holds the largest entry of nearly every scaled column.
+    fn diagonal_leads(&self) -> bool {
+        let pattern = &self.pattern;
+        let led = |j: usize| {
+            let entries = pattern.column_start[j]..pattern.column_start[j + 1];
+            let column = &self.scaled[entries.clone()];
+            let diagonal = pattern.row[entries].binary_search(&j).map(|at| column[at].norm());
+            diagonal.is_ok_and(|diagonal| condition::largest_of(column).1 <= diagonal)
+        };
+        let others = (0..pattern.n).filter(|&j| !led(j)).count();
+        others as f64 <= limits::LARGEST_PART_OFF_DIAGONAL * pattern.n as f64
     }
 
     /// x = A⁻¹ x in double precision.
