@@ -202,3 +202,26 @@ fn the_four_node_feeder_settles_where_each_load_takes_its_power() {
     published.finish();
     amps.finish();
 }
+
+#[test]
+fn configuration_601_has_the_published_shunt_susceptances() {
+    // Microsiemens per mile: aa, ab, ac, bb, bc, cc.
+    let published = [6.2998, -1.9958, -1.2595, 5.9597, -0.7417, 5.6386];
+    let mut check = Check::new("E3 shunt susceptances of 601", "µS/mile", 5.1e-5);
+    for (row, phase) in PHASES.iter().enumerate() {
+        let excite = format!("excite_{phase}");
+        let set = [(excite.as_str(), "1 V".to_owned())];
+        let solved = solve_set("e3_line_capacitance", 60.0, &set);
+        for (pair, susceptance) in PAIRS.into_iter().zip(published) {
+            let column = match pair {
+                (i, j) if i == row => j,
+                (i, j) if j == row => i,
+                _ => continue,
+            };
+            let current = solved.amps(&format!("source_{}", PHASES[column]));
+            let at = format!("{phase}{}", PHASES[column]);
+            check.phasor(&at, current * 1e6, c(0.0, susceptance));
+        }
+    }
+    check.finish();
+}

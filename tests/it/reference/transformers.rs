@@ -247,7 +247,7 @@ fn the_primary_voltage_at_full_load_is_that_of_the_worked_example() {
     let solved = NAMEPLATES[0].without_core().full_load(50e3, 0.8);
     let mut check = Check::new("E2 50 kVA, primary voltage", "V", 5.1e-7);
     let (primary, secondary) = (solved.volts("h"), solved.volts("x"));
-    check.phasor("at 240 V", 240.0 * primary / secondary, c(2446.447_268, 12.411_359));
+    check.phasor("at 240 V", 240.0 * primary / secondary, c(2_446.447_268, 12.411_359));
     check.finish();
 }
 
