@@ -1,9 +1,9 @@
 //! `check`: reads and judges a circuit without solving it.
 
-use crate::cli::options::CommonArgs;
-use crate::cli::output;
 use crate::circuit::Circuit;
 use crate::circuit::island::{Islands, Regime};
+use crate::cli::options::CommonArgs;
+use crate::cli::output;
 use crate::cli::report::{Ending, Stop};
 use crate::diag::{Diagnostic, Severity};
 use crate::render::check::{CheckPage, Counts};

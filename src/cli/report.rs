@@ -1,8 +1,8 @@
 //! How a command ends: diagnostics and notes on standard error, and the exit code.
 
-use crate::study::StudyError;
 use crate::diag::Diagnostic;
 use crate::source::Sources;
+use crate::study::StudyError;
 use std::io::{self, IsTerminal, Write};
 use std::process::ExitCode;
 
