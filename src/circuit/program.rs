@@ -83,6 +83,12 @@ impl Program {
         };
         match elaborate::elaborate(&input) {
             Err(errors) => (None, errors.iter().map(CircuitError::diagnostic).collect()),
+            Ok(circuit) if circuit.elements.is_empty() => {
+                let error = Diagnostic::error("there is no element in this circuit")
+                    .at(Span::default(), "")
+                    .help("a path puts one between two nodes: `gnd -( drive: 12 V +)- in`");
+                (None, vec![error])
+            }
             Ok(circuit) => {
                 let found = judge::judge(&circuit);
                 let wrong = found.iter().any(|d| d.severity == Severity::Error);
