@@ -27,6 +27,9 @@ pub const DEEPEST_BLOCKS: usize = 64;
 /// more than any memory holds.
 pub const MOST_ELEMENTS: usize = 4_000_000;
 
+/// More instances of blocks than this are refused, for the same reason.
+pub const MOST_INSTANCES: usize = 200_000;
+
 /// What elaboration works on.
 pub struct Input<'a> {
     /// Every text, for the data files.
@@ -94,6 +97,8 @@ enum Pending<'a> {
 struct Elaborator<'a> {
     input: &'a Input<'a>,
     errors: Vec<CircuitError>,
+    /// True once there is too much of something to go on.
+    stopped: bool,
     scopes: Vec<Scope<'a>>,
     lets: Vec<Let<'a>>,
     pending: Vec<(ScopeId, Pending<'a>)>,
@@ -131,6 +136,7 @@ impl<'a> Elaborator<'a> {
         let mut work = Elaborator {
             input,
             errors: Vec::new(),
+            stopped: false,
             scopes: Vec::new(),
             lets: Vec::new(),
             pending: Vec::new(),
