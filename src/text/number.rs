@@ -39,10 +39,11 @@ pub fn number(start: Cursor<'_>) -> Read<'_, Expr> {
         let value = kept(&written, 0, start.span_to(rest))?;
         return Ok((rest, Expr { kind: ExprKind::Imaginary(value), span }));
     }
-    if written.fraction.is_none() && written.exponent.is_none() {
-        if let Some(mark) = marked(start, rest, written.whole) {
-            return mark;
-        }
+    if written.fraction.is_none()
+        && written.exponent.is_none()
+        && let Some(mark) = marked(start, rest, written.whole)
+    {
+        return mark;
     }
     let (rest, unit) = match unit(spaces(rest))? {
         (after, Some(unit)) => (after, Some(unit)),
@@ -223,7 +224,7 @@ pub fn unit(start: Cursor<'_>) -> Read<'_, Option<Unit>> {
     let Some(first) = Unit::from_symbol(word) else {
         let span = start.span(word.len());
         let suggestion = Unit::likely(word);
-        if word == "j" || FUNCTIONS.contains(&word) {
+        if word == "j" || word == "f" || FUNCTIONS.contains(&word) {
             let hint = "write `*` to multiply";
             return Err(failure(unexpected(start, "a unit or an operator", hint)));
         }
