@@ -255,12 +255,16 @@ const SYMBOLS: [Symbol; 20] = [
 
 /// Splits a whole word into a prefix and a unit symbol. No word splits in two ways: a test says so.
 fn split(word: &str) -> Option<(Option<&'static Prefix>, &'static Symbol)> {
-    if let Some(symbol) = SYMBOLS.iter().find(|s| s.written == word) {
-        return Some((None, symbol));
+    /// Names of values pass here too: most are told apart by their last byte.
+    fn ends(word: &str, symbol: &Symbol) -> bool {
+        word.as_bytes().last() == symbol.written.as_bytes().last()
     }
-    PREFIXES.iter().find_map(|prefix| {
-        let rest = word.strip_prefix(prefix.0)?;
-        let symbol = SYMBOLS.iter().find(|s| s.prefixed && s.written == rest)?;
+    SYMBOLS.iter().filter(|symbol| ends(word, symbol)).find_map(|symbol| {
+        let before = word.strip_suffix(symbol.written)?;
+        if before.is_empty() {
+            return Some((None, symbol));
+        }
+        let prefix = PREFIXES.iter().find(|prefix| symbol.prefixed && prefix.0 == before)?;
         Some((Some(prefix), symbol))
     })
 }

@@ -49,9 +49,14 @@ fn common_slips_in_elements_are_told_with_their_fix() {
         "a decimal point is written `.`",
     );
     check(
+        "a -( x: 2 Ω, ▸ers◂ 3 Ω )- b",
+        "expected an attribute: `q`, `esr`, `tand` or `tol`, found `ers`",
+        "did you mean `esr`?",
+    );
+    check(
         "a -( x: 2 Ω, ▸Q◂ 3 )- b",
         "expected an attribute: `q`, `esr`, `tand` or `tol`, found `Q`",
-        "",
+        "did you mean `q`?",
     );
     check("a -( x: 2 Ω ▸3◂ )- b", "expected an operator, `,` or `)-`, found `3`", "");
 }
@@ -206,8 +211,10 @@ fn brackets_without_a_partner_are_shown_where_they_stand() {
     let words = "this bracket is never closed";
     check("let x = ▸(◂1 + 2\nlet y = 2", words, close);
     check("let x = ▸(◂1 + (2)\n\n", words, close);
-    check("gnd ▸-(◂ r: 3 * (4 + 5 )- b\nb == c", words, close);
-    check("gnd ▸-(◂ r: (((4 + 5)) Ω\n )- b -( s: 3 )- c\n", words, close);
+    check("gnd -( r: 3 * ▸(◂4 + 5 )- b\nb == c", words, close);
+    check("gnd -( r: sqrt▸(◂4 + (5) )- b\nb == c", words, close);
+    check("gnd ▸-(◂ r: 3 * (4)- 5\nb == c", words, close);
+    check("gnd -( r: ▸(◂((4 + 5)) Ω\n )- b -( s: 3 )- c\n", words, close);
     check("block c ▸(◂a b {\n a == b\n }", words, close);
     check(
         "let x = 1 ▸)◂",

@@ -113,6 +113,7 @@ fn an_unknown_unit_is_marked_and_a_likely_one_named() {
         ("30 °C", 3..6, None),
         ("(3) Ohm", 4..7, Some("ohm")),
         ("sqrt(3) volts", 8..13, Some("V")),
+        ("10 Ohmz", 3..7, Some("ohm")),
         ("4.7 k", 4..5, Some("kΩ")),
     ];
     for (text, range, likely) in table {
