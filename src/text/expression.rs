@@ -27,6 +27,7 @@ pub fn expression(input: Cursor<'_>) -> Read<'_, Expr> {
     let mut terms = Vec::new();
     while let (after, Some(operator)) = opt(sum_operator).parse(rest)? {
         let (after, term) = operand(input, product).parse(after)?;
+        start_small(&mut terms);
         terms.push((operator, term));
         rest = after;
     }
@@ -35,6 +36,13 @@ pub fn expression(input: Cursor<'_>) -> Read<'_, Expr> {
     };
     let span = first.span.to(last.span);
     Ok((rest, Expr { kind: ExprKind::Sum(Box::new(first), terms), span }))
+}
+
+/// Most chains have one link: room for more is made when they come.
+fn start_small<T>(chain: &mut Vec<T>) {
+    if chain.is_empty() {
+        chain.reserve_exact(1);
+    }
 }
 
 fn sum_operator(input: Cursor<'_>) -> Read<'_, SumOperator> {
@@ -51,6 +59,7 @@ fn product(input: Cursor<'_>) -> Read<'_, Expr> {
     let mut factors = Vec::new();
     while let (after, Some(operator)) = opt(product_operator).parse(rest)? {
         let (after, factor) = operand(input, signed).parse(after)?;
+        start_small(&mut factors);
         factors.push((operator, factor));
         rest = after;
     }
