@@ -11,7 +11,7 @@ use crate::text::lexis::{
     text, word, word_here,
 };
 use crate::text::number::{number, unit, unit_word};
-use crate::text::words::{FUNCTIONS, JOINTS, READINGS};
+use crate::text::words::{FUNCTIONS, JOINTS, READINGS, is_usual_unit};
 use nom::Parser;
 use nom::branch::alt;
 use nom::combinator::{opt, value};
@@ -203,7 +203,7 @@ fn call_or_name(start: Cursor<'_>) -> Read<'_, Expr> {
         let name = found.to_owned();
         return Err(failure(TextError::FunctionWithoutBrackets { name, span }));
     }
-    if Unit::from_symbol(found).is_some() {
+    if is_usual_unit(found) {
         return Err(lone_unit(start));
     }
     if !called {
