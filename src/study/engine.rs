@@ -204,7 +204,7 @@ impl<'c> Engine<'c> {
 
     /// The value of a formula at the frequency solved last.
     pub fn value(&self, id: FormulaId) -> Result<Ball, Fault> {
-        self.values[id.index()].clone()
+        self.values[id.index()]
     }
 
     /// Voltage of a node against the reference of its island.

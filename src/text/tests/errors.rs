@@ -166,7 +166,6 @@ fn words_of_the_language_do_not_name_values() {
     let help = "choose another name, for example with a suffix such as `_1`";
     let table = [
         ("mH", "is a unit (millihenry)"),
-        ("Rs", "is a unit (ronnasecond)"),
         ("m", "is a unit (metre)"),
         ("V", "is a unit (volt)"),
         ("ohm", "is a unit (ohm)"),
@@ -246,4 +245,11 @@ fn all_errors_of_a_text_are_reported_in_order() {
     assert_eq!(found, ["=", "(", "foo", "Ohm", "j", "}", "x", "", ")"]);
     let (file, _) = parse(ID, text);
     assert_eq!(file.statements.len(), 2, "the block and the last `let` are kept");
+}
+
+#[test]
+fn units_that_nobody_writes_may_be_names() {
+    for name in ["Rs", "Gm", "Em", "Ts"] {
+        assert_eq!(crate::text::reserved(name), None, "{name}");
+    }
 }
