@@ -110,6 +110,24 @@ pub fn explain(circuit: &Circuit, twin: &Twin) -> Vec<String> {
     lines
 }
 
+/// The lines that say what was replaced, what allowed it, and by which formulas, in short.
+pub fn summary(record: &Swapped) -> Vec<String> {
+    let mut lines = vec![format!("{}, now a {}:", record.windings.join(", "), record.kind)];
+    lines.push(format!("  {}", condition(&record.condition)));
+    for leg in &record.legs {
+        let what = match (leg.fate, &leg.purchase) {
+            (Fate::Element, Purchase::Negative) => " (negative: no real part)".to_owned(),
+            (Fate::Element, _) if leg.rounded_from.is_some() => {
+                format!(", rounded to {}", quantity(leg.value, leg.unit))
+            }
+            (Fate::Element, _) => String::new(),
+            _ => format!(" ({})", to_buy(leg)),
+        };
+        lines.push(format!("  {} = {}{what}", leg.name, leg.formula));
+    }
+    lines
+}
+
 fn explain_set(record: &Swapped) -> Vec<String> {
     let mut lines = vec![format!("{}, now a {}:", record.windings.join(", "), record.kind)];
     lines.push(format!("  {}", condition(&record.condition)));

@@ -25,7 +25,7 @@ use crate::diag::did_you_mean;
 use algebra::Algebra;
 use build::Build;
 pub use error::SwapError;
-pub use explain::explain;
+pub use explain::{explain, summary};
 pub use ratio::Ratio;
 pub use round::Series;
 use sets::CoupledSet;

@@ -44,14 +44,7 @@ pub(crate) fn meet(
     if build.options.keep_isolation {
         return transformer(Reason::KeepIsolation);
     }
-    let ends = asked.unwrap_or_else(|| {
-        let end_a = reference_end(build, a).unwrap_or(other(a.dot));
-        let negative =
-            build.algebra.real_or_zero(set.inductance(0, 1)).is_some_and(|m| m < 0.0);
-        // Like ends for a positive M, unlike ends for a negative one: the common leg is positive.
-        let like = if (end_a == a.dot) != negative { b.dot } else { other(b.dot) };
-        [end_a, reference_end(build, b).unwrap_or(like)]
-    });
+    let ends = asked.unwrap_or_else(|| best_ends(build, set));
     build.tie_used |= asked.is_some();
     let nodes = [a.node(ends[0]), b.node(ends[1])];
     let pair = build.tie(nodes);
@@ -78,13 +71,19 @@ fn refuse_loop(build: &Build, asked: Option<[End; 2]>) -> Result<(), SwapError> 
     }
 }
 
-/// The end of a winding that is the reference of its island.
-fn reference_end(build: &Build, winding: &Winding) -> Option<End> {
-    [other(winding.dot), winding.dot].into_iter().find(|&end| {
-        let node = winding.node(end);
-        let reference = build.reference[node.index()];
-        build.same_node(node, reference)
-    })
+/// Like ends for a positive M, unlike ends for a negative one, so that the common leg is positive;
+/// of the two ways left the one that meets more references of islands.
+fn best_ends(build: &Build, set: &CoupledSet) -> [End; 2] {
+    let [a, b] = [&set.windings[0], &set.windings[1]];
+    let negative = build.algebra.real_or_zero(set.inductance(0, 1)).is_some_and(|m| m < 0.0);
+    let partner = |end_a| if (end_a == a.dot) != negative { b.dot } else { other(b.dot) };
+    let references = |ends: [End; 2]| {
+        let is_reference = |node: NodeId| build.same_node(node, build.reference[node.index()]);
+        let both = [a.node(ends[0]), b.node(ends[1])];
+        both.into_iter().filter(|node| is_reference(*node)).count()
+    };
+    let [plain, dotted] = [other(a.dot), a.dot].map(|end| [end, partner(end)]);
+    if references(dotted) > references(plain) { dotted } else { plain }
 }
 
 /// Joins the trees of nodes that legs were laid between: at the nodes asked for, else at their
