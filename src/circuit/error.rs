@@ -78,8 +78,8 @@ pub enum CircuitError {
     BlocksTooDeep { most: usize, span: Span },
     #[error("block `{block}` has {} nodes, {given} are given", wanted.len())]
     UseNodeCount { block: String, wanted: Vec<String>, given: usize, span: Span, defined: Span },
-    #[error("the circuit has more than {most} elements")]
-    TooManyElements { most: usize, span: Span },
+    #[error("the circuit is too large: more than {most} of this: {thing}")]
+    TooMany { thing: Thing, most: usize, span: Span },
     #[error("an ideal transformer needs as many turns as windings, and at least two")]
     TurnsCount { windings: usize, turns: usize, span: Span },
     #[error("`let`s that need each other: {}", names.join(" → "))]
@@ -152,6 +152,21 @@ impl CircuitError {
     /// The place that gives the error its file and line.
     pub fn span(&self) -> Span {
         self.diagnostic().labels.first().map_or(Span::default(), |label| label.span)
+    }
+
+    /// True for errors that a statement which could not be read may have caused.
+    pub fn may_follow_from_others(&self) -> bool {
+        use CircuitError as E;
+        matches!(
+            self,
+            E::UnknownOverride { .. }
+                | E::UnknownName { .. }
+                | E::UnknownElement { .. }
+                | E::UnknownNode { .. }
+                | E::UnknownBlock { .. }
+                | E::UnknownParameter { .. }
+                | E::MissingParameter { .. }
+        )
     }
 
     /// The error with its places and ways out.
@@ -255,7 +270,7 @@ impl CircuitError {
             | E::Unreadable { span, .. }
             | E::FileOnly { span, .. }
             | E::BlocksTooDeep { span, .. }
-            | E::TooManyElements { span, .. }
+            | E::TooMany { span, .. }
             | E::ArgumentCount { span, .. }
             | E::DimensionTooLarge { span }
             | E::ExponentUnknown { span, .. }

@@ -1,7 +1,7 @@
 //! Options every command takes: what was typed, and what it means.
 
-use crate::cli::input::{self, Text};
 use crate::circuit::program::{Call, Program};
+use crate::cli::input::{self, Text};
 use crate::cli::report::Stop;
 use crate::diag::{Diagnostic, Severity};
 use crate::quantity::Dimension;

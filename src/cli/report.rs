@@ -1,10 +1,13 @@
 //! How a command ends: diagnostics and notes on standard error, and the exit code.
 
-use crate::study::StudyError;
 use crate::diag::Diagnostic;
 use crate::source::Sources;
+use crate::study::StudyError;
 use std::io::{self, IsTerminal, Write};
 use std::process::ExitCode;
+
+/// Diagnostics drawn in one run. Nobody reads more before mending something.
+const MOST_SHOWN: usize = 40;
 
 /// A command that ran to its end.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -15,6 +18,8 @@ pub enum Ending {
     LimitMissed,
     /// All was said in the output, and the circuit is wrong: exit code 2.
     Refused,
+    /// All was said in the output, and the circuit has no solution: exit code 3.
+    Unsolvable,
 }
 
 /// Why a command could not run to its end.
@@ -55,6 +60,7 @@ pub fn finish(outcome: Result<Ending, Stop>) -> ExitCode {
         Ok(Ending::Done) => 0,
         Ok(Ending::LimitMissed) => 1,
         Ok(Ending::Refused) => 2,
+        Ok(Ending::Unsolvable) => 3,
         Err(Stop::Wrong(found, sources)) => {
             diagnostics(&found, &sources);
             2
@@ -83,8 +89,11 @@ pub fn usage(error: &clap::Error) -> ExitCode {
 pub fn diagnostics(found: &[Diagnostic], sources: &Sources) {
     let colour = io::stderr().is_terminal()
         && std::env::var_os("NO_COLOR").is_none_or(|value| value.is_empty());
-    for diagnostic in found {
+    for diagnostic in found.iter().take(MOST_SHOWN) {
         say(diagnostic.render(sources, colour).trim_end());
+    }
+    if found.len() > MOST_SHOWN {
+        say(&format!("… and {} more; mend these first", found.len() - MOST_SHOWN));
     }
 }
 

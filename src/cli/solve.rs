@@ -2,12 +2,12 @@
 
 use crate::cli::options::{CommonArgs, typed_value};
 use crate::cli::output;
-use crate::study::point;
 use crate::cli::report::{self, Ending, Stop};
 use crate::diag::Diagnostic;
 use crate::render::{Format, SolvedPage, renderer};
 use crate::study::Solution;
 use crate::study::grid;
+use crate::study::point;
 use clap::Args;
 
 /// Solve a circuit at one frequency

@@ -4,10 +4,10 @@ mod plan;
 mod rows;
 
 use crate::cli::options::{CommonArgs, typed_value};
-use crate::study::sweep;
 use crate::cli::report::{Ending, Stop};
 use crate::diag::Diagnostic;
 use crate::render::{Format, renderer};
+use crate::study::sweep;
 use clap::Args;
 use std::io::{self, IsTerminal};
 

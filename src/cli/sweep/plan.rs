@@ -1,11 +1,11 @@
 //! What a sweep's options mean: frequencies, and values of parameters.
 
 use crate::cli::options::{Common, assignment, typed_value};
-use crate::study::sweep::{Plan, Vary};
 use crate::cli::report::Stop;
 use crate::cli::sweep::SweepArgs;
 use crate::diag::Diagnostic;
 use crate::study::grid::{self, GridError, MOST_POINTS, Spacing};
+use crate::study::sweep::{Plan, Vary};
 
 /// Points in a decade where nothing else is said.
 const USUAL_PER_DECADE: usize = 100;

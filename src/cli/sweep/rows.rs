@@ -1,10 +1,10 @@
 //! Takes the rows of a sweep as they are computed and passes them on.
 
 use crate::cli::output::RowWriter;
-use crate::study::sweep::Event;
 use crate::cli::report::{self, Ending, Stop};
 use crate::render::Render;
 use crate::render::number::exact;
+use crate::study::sweep::Event;
 use crate::study::{SweepHead, SweepRow};
 use indicatif::{ProgressBar, ProgressDrawTarget, ProgressStyle};
 use std::io::{self, IsTerminal, StdoutLock};
