@@ -322,7 +322,9 @@ fn roots(circuit: &Circuit) -> Vec<FormulaId> {
     for coupling in &circuit.couplings {
         match coupling.stated {
             Stated::Factor(k) => roots.push(k),
-            Stated::Mutual => roots.extend([coupling.mutual].into_iter().chain(coupling.resistance)),
+            Stated::Mutual => {
+                roots.extend([coupling.mutual].into_iter().chain(coupling.resistance))
+            }
             Stated::Leakage { value, .. } => roots.push(value),
             Stated::Series { aiding, opposing } => roots.extend([aiding, opposing]),
         }

@@ -370,7 +370,12 @@ impl<'o> Build<'o> {
 
     /// What stays outside an equivalent in series with a winding: its loss, and what the currents
     /// of the others do to it through mutual resistance.
-    pub(crate) fn outside(&mut self, set: &CoupledSet, i: usize, mutual: bool) -> Vec<(String, Law)> {
+    pub(crate) fn outside(
+        &mut self,
+        set: &CoupledSet,
+        i: usize,
+        mutual: bool,
+    ) -> Vec<(String, Law)> {
         let winding = &set.windings[i];
         let mut laws = Vec::new();
         if let Some(resistance) = winding.series {
@@ -467,9 +472,7 @@ impl<'o> Build<'o> {
                 self.algebra.decimal(near, value < 0.0, Dimension::INDUCTANCE)
             }
             _ => {
-                self.warnings.push(format!(
-                    "`{name}` depends on the frequency and is not rounded"
-                ));
+                self.warnings.push(format!("`{name}` depends on the frequency and is not rounded"));
                 exact
             }
         }

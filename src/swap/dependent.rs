@@ -22,8 +22,13 @@ pub(crate) fn build(build: &mut Build, set: &CoupledSet) -> Result<Condition, Sw
             let Some(z) = build.algebra.sum(mutual.resistance, reactance) else { continue };
             let joint = joint(&set.windings[i].name, &set.windings[j].name);
             build.name_value(&format!("Z_{joint}"), z);
-            build.note(&format!("Z_{}", joint.replace('.', "_")), Some(z),
-                Dimension::RESISTANCE, Fate::Element, true);
+            build.note(
+                &format!("Z_{}", joint.replace('.', "_")),
+                Some(z),
+                Dimension::RESISTANCE,
+                Fate::Element,
+                true,
+            );
             impedance[i * set.len() + j] = Some(z);
             impedance[j * set.len() + i] = Some(z);
         }

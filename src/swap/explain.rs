@@ -132,7 +132,8 @@ fn explain_set(record: &Swapped) -> Vec<String> {
     let mut lines = vec![format!("{}, now a {}:", record.windings.join(", "), record.kind)];
     lines.push(format!("  {}", condition(&record.condition)));
     if record.isolation_lost {
-        lines.push("  lost: the windings were isolated from each other, the twin joins them".into());
+        lines
+            .push("  lost: the windings were isolated from each other, the twin joins them".into());
     }
     let n = record.windings.len();
     let mut rows = vec![["winding", "L", "leakage", "k to the others"].map(String::from).to_vec()];

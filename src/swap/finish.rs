@@ -3,8 +3,8 @@
 use crate::circuit::island::{Islands, Regime};
 use crate::circuit::print::Printer;
 use crate::circuit::{
-    Circuit, Coupling, Drive, Element, ElementId, FormulaId, GND, Ideal, Law, Measure, Node, NodeId,
-    Operation, Stated, Tape,
+    Circuit, Coupling, Drive, Element, ElementId, FormulaId, GND, Ideal, Law, Measure, Node,
+    NodeId, Operation, Stated, Tape,
 };
 use crate::diag::did_you_mean;
 use crate::number::Function;

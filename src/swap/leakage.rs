@@ -163,8 +163,13 @@ fn factor(build: &mut Build, set: &CoupledSet) -> Result<Vec<Step>, SwapError> {
             let [own, first] = [i, p].map(|i| set.windings[i].name.as_str());
             let joint = joint(own, first);
             build.name_value(&format!("n_{joint}"), ratio);
-            build.note(&format!("n_{}", joint.replace('.', "_")), Some(ratio), Dimension::NONE,
-                Fate::Element, true);
+            build.note(
+                &format!("n_{}", joint.replace('.', "_")),
+                Some(ratio),
+                Dimension::NONE,
+                Fate::Element,
+                true,
+            );
             turns[i] = Some(ratio);
         }
         for (x, &i) in left.iter().enumerate() {
@@ -190,4 +195,3 @@ fn factor(build: &mut Build, set: &CoupledSet) -> Result<Vec<Step>, SwapError> {
     }
     Ok(steps)
 }
-

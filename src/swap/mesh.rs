@@ -126,13 +126,7 @@ struct Inverse {
 
 impl Inverse {
     /// −B_pq, from the incidence of the windings on the two terminals.
-    fn between(
-        &self,
-        algebra: &mut Algebra,
-        terminals: &Terminals,
-        p: usize,
-        q: usize,
-    ) -> Maybe {
+    fn between(&self, algebra: &mut Algebra, terminals: &Terminals, p: usize, q: usize) -> Maybe {
         let sign = |terminal: usize, winding: usize| {
             let [dotted, plain] = terminals.of[winding];
             i8::from(dotted == terminal) - i8::from(plain == terminal)

@@ -73,9 +73,10 @@ impl FromStr for Kind {
     type Err = String;
 
     fn from_str(word: &str) -> Result<Self, String> {
-        Kind::ALL.into_iter().find(|kind| kind.word() == word).ok_or_else(|| {
-            String::from("the kinds are tee, pi, mesh, leakage and dependent")
-        })
+        Kind::ALL
+            .into_iter()
+            .find(|kind| kind.word() == word)
+            .ok_or_else(|| String::from("the kinds are tee, pi, mesh, leakage and dependent"))
     }
 }
 

@@ -31,15 +31,8 @@ const E24: [u32; 24] = [
 
 impl Series {
     /// All series, the coarsest first.
-    pub const ALL: [Series; 7] = [
-        Series::E3,
-        Series::E6,
-        Series::E12,
-        Series::E24,
-        Series::E48,
-        Series::E96,
-        Series::E192,
-    ];
+    pub const ALL: [Series; 7] =
+        [Series::E3, Series::E6, Series::E12, Series::E24, Series::E48, Series::E96, Series::E192];
 
     /// How many values a decade has.
     pub fn size(self) -> usize {
@@ -73,10 +66,8 @@ impl Series {
     /// The preferred value nearest to a positive finite value.
     pub fn nearest(self, value: f64) -> Decimal {
         let decade = value.log10().floor() as i32;
-        let exact = |(mantissa, exponent): (u32, i32)| Decimal {
-            mantissa: u128::from(mantissa),
-            exponent,
-        };
+        let exact =
+            |(mantissa, exponent): (u32, i32)| Decimal { mantissa: u128::from(mantissa), exponent };
         (-1..=1)
             .flat_map(|step| self.decade().into_iter().map(move |v| (v, decade + step - 2)))
             .map(exact)

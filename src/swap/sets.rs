@@ -1,6 +1,8 @@
 //! Connected sets of coupled windings with their matrices, as formulas.
 
-use crate::circuit::{Circuit, Coupling, ElementId, End, FormulaId, Law, NodeId, Operation, Stated};
+use crate::circuit::{
+    Circuit, Coupling, ElementId, End, FormulaId, Law, NodeId, Operation, Stated,
+};
 use crate::source::Span;
 use crate::swap::algebra::{Algebra, Maybe};
 use std::collections::HashMap;
@@ -179,10 +181,7 @@ pub(crate) fn find(circuit: &Circuit, algebra: &Algebra) -> Vec<CoupledSet> {
     for coupling in &circuit.couplings {
         couplings.entry(root(&group, coupling.first)).or_default().push(coupling);
     }
-    members
-        .iter()
-        .map(|(top, ids)| set(circuit, algebra, ids, &couplings[top]))
-        .collect()
+    members.iter().map(|(top, ids)| set(circuit, algebra, ids, &couplings[top])).collect()
 }
 
 fn set(

@@ -18,10 +18,7 @@ pub(crate) enum Meeting {
 }
 
 /// Decides how a pair meets, and makes the tie where one is needed and allowed.
-pub(crate) fn meet(
-    build: &mut Build,
-    set: &CoupledSet,
-) -> Result<(Meeting, Condition), SwapError> {
+pub(crate) fn meet(build: &mut Build, set: &CoupledSet) -> Result<(Meeting, Condition), SwapError> {
     let transformer = |reason| Ok((Meeting::Transformer(reason), Condition::Transformer(reason)));
     if build.options.ratio.is_some() {
         return transformer(Reason::Ratio);

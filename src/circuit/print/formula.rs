@@ -193,7 +193,8 @@ impl<'c> Formulas<'c> {
             }
             O::Quotient(..) => match self.parallel(id) {
                 Some(arguments) => {
-                    let arguments: Vec<_> = arguments.iter().map(|&a| self.text(names, a)).collect();
+                    let arguments: Vec<_> =
+                        arguments.iter().map(|&a| self.text(names, a)).collect();
                     (format!("parallel({})", arguments.join(", ")), Binding::Atom)
                 }
                 None => (self.write_chain(names, id), Binding::Product),
@@ -308,7 +309,11 @@ impl<'c> Formulas<'c> {
         let (value_is_plain, formula) = (tape.get(value).dimension == none, tape.get(unit));
         let one = matches!(formula.operation, Operation::Number(d)
             if normal(d).mantissa == 1 && normal(d).exponent % 3 == 0);
-        let bare = !matches!(tape.get(value).operation, Operation::Number(_));
+        // Products go on: `2 * pi * 1 kHz`.
+        let bare = match tape.get(value).operation {
+            Operation::Number(_) => false,
+            _ => self.has_name(value) || self.chain_of(value) != Chain::Product,
+        };
         value_is_plain
             && one
             && bare

@@ -3,12 +3,32 @@
 use crate::exact;
 use crate::swap::agree::{assert_agrees, assert_same_reads, read, solvable};
 use bifilar::circuit::Circuit;
+use bifilar::circuit::island::{Islands, Regime};
 use bifilar::circuit::print::Printer;
-use bifilar::swap::{self, Kind, Options, SwapError};
+use bifilar::swap::{self, Condition, Kind, Options, SwapError, Swapped, Twin};
 use fastrand::Rng;
 
 /// Every twin agrees with its original to this fraction, beside the bounds of both solutions.
 const WITHIN: f64 = 1e-9;
+
+/// How many islands have elements.
+fn islands(circuit: &Circuit) -> usize {
+    let islands = Islands::find(circuit, Regime::Alternating);
+    let mut tied = vec![false; islands.reference.len()];
+    for element in &circuit.elements {
+        tied[islands.of_node[element.left.index()]] = true;
+    }
+    tied.iter().filter(|tied| **tied).count()
+}
+
+/// How many ties were made: each must join two islands, or it would close a loop.
+fn ties(twin: &Twin) -> usize {
+    let of = |record: &Swapped| match &record.condition {
+        Condition::Tied(ties) => ties.len(),
+        _ => 0,
+    };
+    twin.records.iter().map(of).sum()
+}
 
 /// Checks every kind of twin; how many there were of each.
 fn check_all(circuit: &Circuit, frequencies_hz: &[f64], counts: &mut [usize; 5]) {
@@ -21,6 +41,7 @@ fn check_all(circuit: &Circuit, frequencies_hz: &[f64], counts: &mut [usize; 5])
                     let wrong = bifilar::circuit::judge::judge(&twin.circuit);
                     let wrong = wrong.iter().find(|d| d.severity == bifilar::diag::Severity::Error);
                     assert_eq!(wrong, None);
+                    assert_eq!(islands(circuit), islands(&twin.circuit) + ties(&twin));
                     for &frequency_hz in frequencies_hz {
                         assert_agrees(circuit, &twin, frequency_hz, WITHIN);
                     }
@@ -172,8 +193,8 @@ fn any_leg_moved_by_one_part_in_a_million_is_noticed() {
     for kind in [Kind::Tee, Kind::Pi] {
         let twin = swap::twin(&circuit, &Options::new(kind)).expect("a twin");
         let solve = |circuit: &Circuit, id| {
-            let mut engine =
-                Engine::new(circuit, bifilar::circuit::island::Regime::Alternating).expect("system");
+            let mut engine = Engine::new(circuit, bifilar::circuit::island::Regime::Alternating)
+                .expect("system");
             engine.solve(159.0).expect("a solution");
             engine.measure(Measure::Drop(id)).expect("a drop").centre.to_complex()
         };
