@@ -7,6 +7,7 @@ mod options;
 mod output;
 mod report;
 mod solve;
+mod swap;
 mod sweep;
 
 use clap::{Parser, Subcommand};
@@ -30,6 +31,7 @@ enum Command {
     Check(check::CheckArgs),
     Solve(solve::SolveArgs),
     Sweep(sweep::SweepArgs),
+    Swap(swap::SwapArgs),
 }
 
 /// Runs the program with these arguments, the first being its own name.
@@ -42,6 +44,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> ExitCode {
         Command::Check(typed) => check::run(&typed),
         Command::Solve(typed) => solve::run(&typed),
         Command::Sweep(typed) => sweep::run(&typed),
+        Command::Swap(typed) => swap::run(&typed),
     };
     report::finish(outcome)
 }

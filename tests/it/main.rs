@@ -4,6 +4,7 @@
 //! - `exact`: circuits drawn at random, solved in exact arithmetic by another formulation
 //! - `examples`: circuits of the scenario and of the docs
 //! - `reference`: published values from outside the project
+//! - `swap`: circuits with their couplings replaced
 //! - `tidy`: rules of the house
 //! - `support`: solve a circuit text and read values by name
 
@@ -12,4 +13,5 @@ mod exact;
 mod examples;
 mod reference;
 mod support;
+mod swap;
 mod tidy;
