@@ -5,9 +5,11 @@
 //! `solve` (factors, refinement) → `study` (point, sweep) → `render` → `cli`.
 
 pub mod circuit;
+pub mod cli;
 pub mod diag;
 pub mod number;
 pub mod quantity;
+pub mod render;
 pub mod solve;
 pub mod source;
 pub mod study;

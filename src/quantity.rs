@@ -176,3 +176,251 @@ pub struct Unit {
     /// What else it does to the number.
     pub conversion: Conversion,
 }
+
+/// The SI prefixes with their spoken names and powers of ten; micro in all three spellings.
+pub const PREFIXES: [(&str, &str, i32); 26] = [
+    ("Q", "quetta", 30),
+    ("R", "ronna", 27),
+    ("Y", "yotta", 24),
+    ("Z", "zetta", 21),
+    ("E", "exa", 18),
+    ("P", "peta", 15),
+    ("T", "tera", 12),
+    ("G", "giga", 9),
+    ("M", "mega", 6),
+    ("k", "kilo", 3),
+    ("h", "hecto", 2),
+    ("da", "deca", 1),
+    ("d", "deci", -1),
+    ("c", "centi", -2),
+    ("m", "milli", -3),
+    ("u", "micro", -6),
+    ("\u{b5}", "micro", -6),
+    ("\u{3bc}", "micro", -6),
+    ("n", "nano", -9),
+    ("p", "pico", -12),
+    ("f", "femto", -15),
+    ("a", "atto", -18),
+    ("z", "zepto", -21),
+    ("y", "yocto", -24),
+    ("r", "ronto", -27),
+    ("q", "quecto", -30),
+];
+
+/// A unit symbol of the language.
+struct Symbol {
+    written: &'static str,
+    spoken: &'static str,
+    dimension: Dimension,
+    power_of_ten: i32,
+    conversion: Conversion,
+    prefixed: bool,
+}
+
+const fn symbol(written: &'static str, spoken: &'static str, dimension: Dimension) -> Symbol {
+    let conversion = Conversion::Plain;
+    Symbol { written, spoken, dimension, power_of_ten: 0, conversion, prefixed: true }
+}
+
+const fn degree(written: &'static str) -> Symbol {
+    let plain = symbol(written, "degree", Dimension::NONE);
+    Symbol { conversion: Conversion::Degrees, prefixed: false, ..plain }
+}
+
+const SYMBOLS: [Symbol; 20] = [
+    symbol("V", "volt", Dimension::VOLTAGE),
+    symbol("A", "ampere", Dimension::CURRENT),
+    symbol("W", "watt", Dimension::POWER),
+    symbol("VA", "volt-ampere", Dimension::POWER),
+    symbol("var", "reactive volt-ampere", Dimension::POWER),
+    symbol("\u{3a9}", "ohm", Dimension::RESISTANCE),
+    symbol("\u{2126}", "ohm", Dimension::RESISTANCE),
+    symbol("ohm", "ohm", Dimension::RESISTANCE),
+    symbol("S", "siemens", Dimension::CONDUCTANCE),
+    symbol("H", "henry", Dimension::INDUCTANCE),
+    symbol("F", "farad", Dimension::CAPACITANCE),
+    symbol("Hz", "hertz", Dimension::FREQUENCY),
+    symbol("s", "second", Dimension::TIME),
+    symbol("m", "metre", Dimension::LENGTH),
+    symbol("rad", "radian", Dimension::NONE),
+    degree("\u{b0}"),
+    degree("deg"),
+    Symbol { conversion: Conversion::Peak, ..symbol("Vpk", "volt (peak)", Dimension::VOLTAGE) },
+    Symbol { conversion: Conversion::Peak, ..symbol("Apk", "ampere (peak)", Dimension::CURRENT) },
+    Symbol { power_of_ten: -2, prefixed: false, ..symbol("%", "percent", Dimension::NONE) },
+];
+
+/// Splits a whole word into a prefix and a unit symbol. No word splits in two ways: a test says so.
+fn split(word: &str) -> Option<(Option<&'static (&'static str, &'static str, i32)>, &Symbol)> {
+    if let Some(symbol) = SYMBOLS.iter().find(|s| s.written == word) {
+        return Some((None, symbol));
+    }
+    PREFIXES.iter().find_map(|prefix| {
+        let rest = word.strip_prefix(prefix.0)?;
+        let symbol = SYMBOLS.iter().find(|s| s.prefixed && s.written == rest)?;
+        Some((Some(prefix), symbol))
+    })
+}
+
+impl Unit {
+    /// A unit without a prefix or a conversion.
+    pub const fn plain(dimension: Dimension) -> Unit {
+        Unit { dimension, power_of_ten: 0, conversion: Conversion::Plain }
+    }
+
+    /// The unit a whole word stands for: one symbol with at most one prefix (`kHz`, `µH`, `°`).
+    pub fn from_symbol(word: &str) -> Option<Unit> {
+        let (prefix, symbol) = split(word)?;
+        Some(Unit {
+            dimension: symbol.dimension,
+            power_of_ten: symbol.power_of_ten + prefix.map_or(0, |p| p.2),
+            conversion: symbol.conversion,
+        })
+    }
+
+    /// How a unit symbol is spoken: `kilohertz` for `kHz`.
+    pub fn spoken(word: &str) -> Option<String> {
+        let (prefix, symbol) = split(word)?;
+        Some(format!("{}{}", prefix.map_or("", |p| p.1), symbol.spoken))
+    }
+
+    /// The prefix letter's power of ten (`k` is 3).
+    pub fn prefix(letter: &str) -> Option<i32> {
+        PREFIXES.iter().find(|p| p.0 == letter).map(|p| p.2)
+    }
+
+    /// A known unit symbol that is likely meant by an unknown one (`kHz` for `KHz`).
+    pub fn likely(word: &str) -> Option<String> {
+        /// Everyday prefixes: a suggestion never proposes yoctovolts.
+        const EVERYDAY: [&str; 9] = ["", "k", "m", "\u{b5}", "u", "n", "p", "M", "G"];
+        let spelled = |symbol: &Symbol, prefix: &str| format!("{prefix}{}", symbol.written);
+        let all = SYMBOLS.iter().flat_map(|symbol| {
+            let count = if symbol.prefixed { EVERYDAY.len() } else { 1 };
+            EVERYDAY[..count].iter().map(move |prefix| spelled(symbol, prefix))
+        });
+        if word.chars().count() > 8 {
+            return None;
+        }
+        let folded = word.to_lowercase();
+        let spoken =
+            SYMBOLS.iter().find(|s| folded == s.spoken || folded == format!("{}s", s.spoken));
+        if let Some(symbol) = spoken {
+            return Some(symbol.written.to_owned());
+        }
+        // Only the case differs: the first letter written as it stands weighs most.
+        let mut same: Vec<String> = all.filter(|unit| unit.to_lowercase() == folded).collect();
+        let first = word.chars().next();
+        same.sort_by_key(|unit| unit.chars().next() != first);
+        same.into_iter().next()
+    }
+
+    /// The unit of a product; `None` where it cannot be kept.
+    pub fn times(self, other: Unit) -> Option<Unit> {
+        self.combined(other, self.dimension.times(other.dimension)?, 1)
+    }
+
+    /// The unit of a quotient; `None` where it cannot be kept.
+    pub fn over(self, other: Unit) -> Option<Unit> {
+        self.combined(other, self.dimension.over(other.dimension)?, -1)
+    }
+
+    /// A unit to a whole power; `None` where it cannot be kept.
+    pub fn power(self, exponent: i32) -> Option<Unit> {
+        if exponent == 1 {
+            return Some(self);
+        }
+        let plain = self.conversion == Conversion::Plain;
+        let dimension = self.dimension.power(f64::from(exponent))?;
+        let power_of_ten = self.power_of_ten.checked_mul(exponent)?;
+        plain.then_some(Unit { dimension, power_of_ten, conversion: Conversion::Plain })
+    }
+
+    /// Degrees and peak values are kept only as the first factor, to the first power.
+    fn combined(self, other: Unit, dimension: Dimension, sign: i32) -> Option<Unit> {
+        let power_of_ten = self.power_of_ten.checked_add(other.power_of_ten.checked_mul(sign)?)?;
+        let plain = other.conversion == Conversion::Plain;
+        plain.then_some(Unit { dimension, power_of_ten, conversion: self.conversion })
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use crate::quantity::{Conversion, Dimension, PREFIXES, SYMBOLS, Unit};
+
+    #[test]
+    fn no_word_is_two_units() {
+        let mut seen = std::collections::HashSet::new();
+        for symbol in &SYMBOLS {
+            assert!(seen.insert(symbol.written.to_owned()), "{}", symbol.written);
+            for prefix in PREFIXES.iter().filter(|_| symbol.prefixed) {
+                let word = format!("{}{}", prefix.0, symbol.written);
+                assert!(seen.insert(word.clone()), "{word} reads in two ways");
+            }
+        }
+    }
+
+    #[test]
+    fn prefixes_and_symbols_are_told_apart_by_the_whole_word() {
+        let table = [
+            ("m", Dimension::LENGTH, 0),
+            ("mm", Dimension::LENGTH, -3),
+            ("Mm", Dimension::LENGTH, 6),
+            ("F", Dimension::CAPACITANCE, 0),
+            ("fF", Dimension::CAPACITANCE, -15),
+            ("kHz", Dimension::FREQUENCY, 3),
+            ("\u{b5}H", Dimension::INDUCTANCE, -6),
+            ("\u{3bc}H", Dimension::INDUCTANCE, -6),
+            ("uH", Dimension::INDUCTANCE, -6),
+            ("k\u{3a9}", Dimension::RESISTANCE, 3),
+            ("k\u{2126}", Dimension::RESISTANCE, 3),
+            ("Mohm", Dimension::RESISTANCE, 6),
+            ("daA", Dimension::CURRENT, 1),
+            ("kvar", Dimension::POWER, 3),
+            ("MVA", Dimension::POWER, 6),
+            ("qs", Dimension::TIME, -30),
+            ("QS", Dimension::CONDUCTANCE, 30),
+            ("%", Dimension::NONE, -2),
+        ];
+        for (word, dimension, power_of_ten) in table {
+            let expected = Unit { dimension, power_of_ten, conversion: Conversion::Plain };
+            assert_eq!(Unit::from_symbol(word), Some(expected), "{word}");
+        }
+        for word in
+            ["KHz", "Khz", "hz", "Pa", "dB", "k", "f", "min", "k%", "m\u{b0}", "", "mmm", "Ohm"]
+        {
+            assert_eq!(Unit::from_symbol(word), None, "{word}");
+        }
+    }
+
+    #[test]
+    fn a_wrong_case_is_set_right() {
+        let table = [
+            ("KHz", Some("kHz")),
+            ("Khz", Some("kHz")),
+            ("mhz", Some("mHz")),
+            ("Mhz", Some("MHz")),
+            ("UF", Some("uF")),
+            ("Ohm", Some("ohm")),
+            ("ohms", Some("ohm")),
+            ("Volts", Some("V")),
+            ("dB", None),
+            ("Pa", None),
+        ];
+        for (wrong, right) in table {
+            assert_eq!(Unit::likely(wrong).as_deref(), right, "{wrong}");
+        }
+    }
+
+    #[test]
+    fn compound_units_multiply_prefixes_too() {
+        let unit = |word| Unit::from_symbol(word).expect("a unit");
+        let area = unit("mm").power(2).expect("kept");
+        assert_eq!(area.power_of_ten, -6);
+        let slope = unit("nF").over(unit("km")).expect("kept");
+        assert_eq!(slope.power_of_ten, -12);
+        assert_eq!(slope.dimension, Dimension::CAPACITANCE.over(Dimension::LENGTH).expect("kept"));
+        assert_eq!(unit("Vpk").power(2), None);
+        assert_eq!(unit("V").over(unit("deg")), None);
+        assert_eq!(unit("V").power(i32::MAX), None);
+    }
+}

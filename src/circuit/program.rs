@@ -141,7 +141,8 @@ impl Loader<'_> {
         let (file, errors) = text::parse(source, &self.program.sources.get(source).text);
         self.errors.extend(errors.iter().map(|e| e.diagnostic()));
         let index = self.program.files.len();
-        self.program.files.push(file.clone());
+        // Its place is kept: included files come after it in the list, in the order of the text.
+        self.program.files.push(ast::File::default());
         for (i, statement) in file.statements.iter().enumerate() {
             match &statement.kind {
                 ast::StatementKind::Include(path) => self.include(path, folder),
@@ -151,6 +152,7 @@ impl Loader<'_> {
             data_files(statement, &mut found);
             found.iter().for_each(|file| self.data(file, folder));
         }
+        self.program.files[index] = file;
     }
 
     fn include(&mut self, file: &ast::Text, folder: &Path) {

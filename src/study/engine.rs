@@ -111,15 +111,17 @@ impl<'c> Engine<'c> {
         StudyError::Refused(vec![error])
     }
 
-    fn factor_and_refine(&mut self) -> Result<Trust, SolveError> {
-        let Some(solver) = &mut self.solver else { return Ok(Trust::default()) };
+    fn factor_and_refine(&mut self) -> Result<Option<Trust>, SolveError> {
+        let Some(solver) = &mut self.solver else { return Ok(None) };
         solver.factor(&self.rounded)?;
-        solver.solve_refined(
-            &self.exact_entries,
-            &self.exact_rhs,
-            &mut self.solution,
-            &mut self.error,
-        )
+        solver
+            .solve_refined(
+                &self.exact_entries,
+                &self.exact_rhs,
+                &mut self.solution,
+                &mut self.error,
+            )
+            .map(Some)
     }
 
     fn explain(&mut self, error: SolveError, frequency_hz: f64) -> StudyError {

@@ -162,14 +162,14 @@ pub fn singular(
     null: Option<&[Complex64]>,
 ) -> Vec<Diagnostic> {
     let at = frequency_hz.map_or(String::new(), |f| format!("at {f} Hz "));
-    let (elements, nodes) = match (null, error.column()) {
+    let (elements, nodes) = match (null, column(error)) {
         (Some(null), _) => members(circuit, system, null),
         (None, Some(column)) => one_member(system, column),
         (None, None) => (Vec::new(), Vec::new()),
     };
     let names = list(elements.iter().map(|&id| circuit.element(id).name.as_str()));
     let base = match (elements.is_empty(), nodes.is_empty()) {
-        _ if !error.is_singular() => Diagnostic::error(format!(
+        _ if !is_singular(error) => Diagnostic::error(format!(
             "{at}the accuracy cannot be vouched for: the equations are too close to having no \
              single solution"
         )),
@@ -245,6 +245,19 @@ fn members(
         .map(|i| NodeId(i as u32))
         .collect();
     (elements, nodes)
+}
+
+fn column(error: &SolveError) -> Option<usize> {
+    match *error {
+        SolveError::StructurallySingular { column }
+        | SolveError::Singular { column }
+        | SolveError::NotFinite { column } => Some(column),
+        SolveError::NotAccurate { .. } | SolveError::OutOfMemory => None,
+    }
+}
+
+fn is_singular(error: &SolveError) -> bool {
+    matches!(error, SolveError::StructurallySingular { .. } | SolveError::Singular { .. })
 }
 
 fn one_member(system: &System, column: usize) -> (Vec<ElementId>, Vec<NodeId>) {

@@ -2,6 +2,7 @@
 
 pub mod engine;
 pub mod explain;
+pub mod grid;
 pub mod point;
 pub mod sweep;
 

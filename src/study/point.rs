@@ -1,7 +1,7 @@
 //! One frequency: everything in the circuit.
 
 use crate::circuit::island::Regime;
-use crate::circuit::{Circuit, ElementId, GND, Law, NodeId, Read, judge};
+use crate::circuit::{Circuit, ElementId, Law, NodeId, Read, judge};
 use crate::number::ball::Ball;
 use crate::study::engine::Engine;
 use crate::study::{
@@ -81,11 +81,11 @@ fn node_results(circuit: &Circuit, engine: &Engine) -> Vec<NodeResult> {
     let mut results = Vec::new();
     for (i, node) in circuit.nodes.iter().enumerate() {
         let id = NodeId(i as u32);
-        if !tied[i] || id == GND && node.names.len() == 1 {
+        if !tied[i] {
             continue;
         }
         let reference = engine.system().islands.reference_of(id);
-        for name in node.names.iter().filter(|name| *name != "gnd") {
+        for name in &node.names {
             results.push(NodeResult {
                 name: name.clone(),
                 reference: circuit.node_name(reference).to_owned(),

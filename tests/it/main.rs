@@ -3,11 +3,13 @@
 //! - `bad`: every faulty circuit is refused in the words kept beside it
 //! - `exact`: circuits drawn at random, solved in exact arithmetic by another formulation
 //! - `examples`: circuits of the scenario and of the docs
+//! - `reference`: published values from outside the project
 //! - `tidy`: rules of the house
 //! - `support`: solve a circuit text and read values by name
 
 mod bad;
 mod exact;
 mod examples;
+mod reference;
 mod support;
 mod tidy;

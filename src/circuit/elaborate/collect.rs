@@ -151,6 +151,7 @@ impl<'a> Elaborator<'a> {
                             element.span,
                         );
                         if let Some(id) = made {
+                            self.known_law[id.index()] = false;
                             self.pending.push((scope, Pending::Element { element, id }));
                         }
                     }
@@ -191,6 +192,7 @@ impl<'a> Elaborator<'a> {
         }
         let id = ElementId(self.elements.len() as u32);
         self.element_of.insert(full_name.clone(), id);
+        self.known_law.push(true);
         self.elements.push(Element { name: full_name, left, right, law, tolerance: None, span });
         Some(id)
     }

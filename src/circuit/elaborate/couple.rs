@@ -83,8 +83,8 @@ impl<'a> Elaborator<'a> {
                     self.errors.push(CircuitError::MissingDot { name, span });
                 }
             }
-            // An element whose value was wrong has been reported and stays the stand-in.
-            Law::OpAmp { .. } if !self.element_is_opamp(id) => {}
+            // Its value was wrong, and has been reported.
+            _ if !self.known_law[id.index()] => {}
             _ => {
                 let (element_name, defined) = (element.name.clone(), element.span);
                 let span = name.span;
@@ -92,11 +92,6 @@ impl<'a> Elaborator<'a> {
             }
         }
         None
-    }
-
-    fn element_is_opamp(&self, id: ElementId) -> bool {
-        let span = self.elements[id.index()].span;
-        self.input.sources.slice(span).trim_start().starts_with("opamp")
     }
 
     fn couple_pair(

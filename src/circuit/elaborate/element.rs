@@ -87,6 +87,7 @@ impl<'a> Elaborator<'a> {
 
     fn set_law(&mut self, id: ElementId, law: Law) {
         self.elements[id.index()].law = law;
+        self.known_law[id.index()] = true;
     }
 
     /// The mark of an element, with the end it stands at; says so if it does not belong there.

@@ -107,6 +107,8 @@ struct Elaborator<'a> {
     joined: Vec<u32>,
     elements: Vec<Element>,
     element_of: HashMap<String, ElementId>,
+    /// True once an element's value has said what it is.
+    known_law: Vec<bool>,
     ideals: Vec<Ideal>,
     couplings: Vec<Coupling>,
     coupled: HashMap<(ElementId, ElementId), Span>,
@@ -140,6 +142,7 @@ impl<'a> Elaborator<'a> {
             joined: Vec::new(),
             elements: Vec::new(),
             element_of: HashMap::new(),
+            known_law: Vec::new(),
             ideals: Vec::new(),
             couplings: Vec::new(),
             coupled: HashMap::new(),
@@ -182,11 +185,19 @@ impl<'a> Elaborator<'a> {
         NodeId(at)
     }
 
+    /// Elements first: couplings look at what they are, wherever they stand.
     fn lower_pending(&mut self) {
-        for (scope, pending) in std::mem::take(&mut self.pending) {
+        let pending = std::mem::take(&mut self.pending);
+        for (scope, pending) in &pending {
             match pending {
-                Pending::Element { element, id } => self.lower_element(scope, element, id),
-                Pending::Turns { turns, windings } => self.lower_turns(scope, turns, &windings),
+                Pending::Element { element, id } => self.lower_element(*scope, element, *id),
+                Pending::Turns { turns, windings } => self.lower_turns(*scope, turns, windings),
+                Pending::Couple { .. } | Pending::Read { .. } => {}
+            }
+        }
+        for (scope, pending) in pending {
+            match pending {
+                Pending::Element { .. } | Pending::Turns { .. } => {}
                 Pending::Couple { couple, span } => self.lower_couple(scope, couple, span),
                 Pending::Read { name, value, limits, span } => {
                     self.lower_read(scope, name, value, limits, span);
@@ -218,6 +229,16 @@ impl<'a> Elaborator<'a> {
                 new_of[i] = new_of[root];
                 let name = self.nodes[i].names[0].clone();
                 nodes[new_of[root].index()].names.push(name);
+            }
+        }
+        // The name a reference was chosen by is the one its island is measured against.
+        for &(node, _) in &self.references {
+            let chosen = self.nodes[node.index()].names[0].clone();
+            let names = &mut nodes[new_of[node.index()].index()].names;
+            if let Some(at) = names.iter().position(|name| *name == chosen)
+                && names[0] != "gnd"
+            {
+                names.swap(0, at);
             }
         }
         let renumber = |node: &mut NodeId| *node = new_of[node.index()];

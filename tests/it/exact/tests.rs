@@ -275,9 +275,13 @@ fn claimed_error_bounds_cover_the_true_errors_of_drawn_circuits() {
     }
 }
 
+/// Volts, amperes or volt-amperes below any that exist: where every voltage of a circuit is exactly
+/// zero, there is no largest one to measure roundings by.
+const NOTHING: f64 = 1e-40;
+
 /// How far a result may be off, the largest of its kind in the circuit being given.
 fn allowed(size: f64, largest: f64) -> f64 {
-    (AGREEMENT * size).max(ROUNDINGS_OF_LARGEST * largest)
+    (AGREEMENT * size).max(ROUNDINGS_OF_LARGEST * largest).max(NOTHING)
 }
 
 fn largest<'a>(values: impl Iterator<Item = &'a Exact>) -> f64 {

@@ -1,0 +1,101 @@
+//! Columns side by side for a terminal of 80 columns, and the complex values in them.
+
+use crate::render::number::{Bounded, Scale, Text, UNKNOWN, Widths, angle, engineering, level};
+use crate::render::{Form, Style};
+use crate::study::Value;
+use comfy_table::{ColumnConstraint, ContentArrangement, LineStyle, TableStyle};
+
+/// Columns of a plain terminal.
+const TERMINAL_COLUMNS: u16 = 80;
+/// Blanks before every line of a table.
+const INDENT: &str = "  ";
+/// A thin rule below the headings and nothing else.
+const RULE: TableStyle =
+    TableStyle::new().header_separator(LineStyle::none().fill('─').junction('─'));
+
+/// The two texts of a complex value, the second empty where the value is real.
+pub fn phasor(value: Value, unit: &str, real: bool, style: Style, scale: Scale) -> [Text; 2] {
+    let Value { value: z, error } = value;
+    let digits = style.digits;
+    let part = |x| engineering(Bounded { value: x, error }, digits, unit, scale);
+    match style.form {
+        _ if real && style.form != Form::Decibel => [part(z.re), Text::default()],
+        Form::Rect => {
+            let mut imaginary = part(z.im);
+            let (sign, whole) = match imaginary.whole.strip_prefix('-') {
+                Some(whole) => ("-", whole),
+                None => ("+", imaginary.whole.as_str()),
+            };
+            imaginary.whole = format!("{sign}j{whole}");
+            [part(z.re), imaginary]
+        }
+        Form::Polar => {
+            let size = Bounded::rounded_once(z.norm(), error);
+            let magnitude = engineering(size, digits, unit, scale);
+            let blank = magnitude.whole == UNKNOWN || magnitude.whole == "0";
+            let angle = if blank { Text::default() } else { angle(z, error, digits) };
+            [magnitude, angle]
+        }
+        Form::Decibel => {
+            let level = level(z, error, digits, unit, matches!(unit, "W" | "VA"));
+            let blank = real || level.whole == UNKNOWN || level.whole == "-inf";
+            [level, if blank { Text::default() } else { angle(z, error, digits) }]
+        }
+    }
+}
+
+/// Lines up a column of numbers of two parts.
+fn align(column: &[[Text; 2]]) -> Vec<String> {
+    let first = Widths::of(column.iter().map(|[text, _]| text));
+    let second = Widths::of(column.iter().map(|[_, text]| text));
+    let has_second = second != Widths::default();
+    let line = |[a, b]: &[Text; 2]| match has_second {
+        true => format!("{}  {}", a.padded(first), b.padded(second)),
+        false => a.padded(first),
+    };
+    column.iter().map(line).collect()
+}
+
+/// One column: its heading, its cells, and whether they are numbers, which are never wrapped.
+pub struct Column {
+    heading: &'static str,
+    cells: Vec<String>,
+    numbers: bool,
+}
+
+/// A column of words.
+pub fn words(heading: &'static str, cells: impl IntoIterator<Item = String>) -> Column {
+    Column { heading, cells: cells.into_iter().collect(), numbers: false }
+}
+
+/// A column of complex values.
+pub fn numbers(heading: &'static str, cells: impl IntoIterator<Item = [Text; 2]>) -> Column {
+    let cells: Vec<_> = cells.into_iter().collect();
+    Column { heading, cells: align(&cells), numbers: true }
+}
+
+/// Draws columns side by side.
+pub fn draw(columns: Vec<Column>, text: &mut String) {
+    let mut table = comfy_table::Table::new();
+    table.load_style(RULE).set_content_arrangement(ContentArrangement::Dynamic);
+    table.set_width(TERMINAL_COLUMNS - INDENT.len() as u16);
+    table.set_header(columns.iter().map(|c| c.heading).collect::<Vec<_>>());
+    let rows = columns.first().map_or(0, |c| c.cells.len());
+    for i in 0..rows {
+        table.add_row(columns.iter().map(|c| c.cells[i].as_str()).collect::<Vec<_>>());
+    }
+    for (i, column) in columns.iter().enumerate() {
+        let last = i + 1 == columns.len();
+        if let Some(drawn) = table.column_mut(i) {
+            drawn.set_padding((0, if last { 0 } else { 2 }));
+            if column.numbers {
+                drawn.set_constraint(ColumnConstraint::ContentWidth);
+            }
+        }
+    }
+    for line in table.lines() {
+        text.push_str(format!("{INDENT}{line}").trim_end());
+        text.push('\n');
+    }
+    text.push('\n');
+}
