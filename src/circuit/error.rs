@@ -154,6 +154,21 @@ impl CircuitError {
         self.diagnostic().labels.first().map_or(Span::default(), |label| label.span)
     }
 
+    /// True for errors that a statement which could not be read may have caused.
+    pub fn may_follow_from_others(&self) -> bool {
+        use CircuitError as E;
+        matches!(
+            self,
+            E::UnknownOverride { .. }
+                | E::UnknownName { .. }
+                | E::UnknownElement { .. }
+                | E::UnknownNode { .. }
+                | E::UnknownBlock { .. }
+                | E::UnknownParameter { .. }
+                | E::MissingParameter { .. }
+        )
+    }
+
     /// The error with its places and ways out.
     pub fn diagnostic(&self) -> Diagnostic {
         use CircuitError as E;

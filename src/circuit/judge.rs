@@ -8,7 +8,7 @@ use crate::circuit::{
     CapacitorLoss, Circuit, Element, Fault, FormulaId, GND, Law, Measure, Operation, Phase, Values,
 };
 use crate::diag::Diagnostic;
-use crate::number::{Ball, Balls};
+use crate::number::{Ball, Balls, FieldError};
 use crate::source::Span;
 
 /// Everything wrong or remarkable about a circuit.
@@ -28,6 +28,7 @@ pub fn judge(circuit: &Circuit) -> Vec<Diagnostic> {
         let parts = std::iter::once(coupling.mutual).chain(coupling.resistance);
         parts.for_each(|id| _ = judge_value(circuit, id, &values, &mut found));
     }
+    judge_divisors(circuit, &values, &mut found);
     judge_references(circuit, &islands, &mut found);
     judge_readings(circuit, &islands, &mut found);
     if found.is_empty() {
@@ -151,6 +152,20 @@ fn judge_element(
     }
 }
 
+/// A formula of the frequency that divides by a constant zero has a value at no frequency.
+fn judge_divisors(circuit: &Circuit, values: &Values<Ball>, found: &mut Vec<Diagnostic>) {
+    for (id, formula) in circuit.tape.iter() {
+        let Operation::Quotient(_, below) = formula.operation else { continue };
+        let constant = circuit.tape.get(below).phase == Phase::Constant;
+        if formula.phase != Phase::Frequency || !constant {
+            continue;
+        }
+        if values[below.index()].as_ref().is_ok_and(|ball| ball.centre.is_zero()) {
+            found.push(fault(circuit, Fault { at: id, error: FieldError::DivisionByZero }));
+        }
+    }
+}
+
 fn judge_references(circuit: &Circuit, islands: &Islands, found: &mut Vec<Diagnostic>) {
     let mut chosen: Vec<(usize, Span)> = Vec::new();
     let tied = tied_nodes(circuit);
@@ -179,7 +194,7 @@ fn judge_references(circuit: &Circuit, islands: &Islands, found: &mut Vec<Diagno
 }
 
 /// True for the nodes that an element touches.
-pub(crate) fn tied_nodes(circuit: &Circuit) -> Vec<bool> {
+pub fn tied_nodes(circuit: &Circuit) -> Vec<bool> {
     let mut tied = vec![false; circuit.nodes.len()];
     for element in &circuit.elements {
         tied[element.left.index()] = true;

@@ -67,27 +67,37 @@ impl Program {
         };
         loader.parse(name, text, folder);
         loader.take_call(call);
+        loader.add_circuit_errors();
         (loader.program, loader.errors)
     }
 
     /// The flat circuit with remarks, or `None` with what is wrong.
     pub fn circuit(&self) -> (Option<Circuit>, Vec<Diagnostic>) {
-        let statements =
-            self.order.iter().map(|&(file, i)| &self.files[file].statements[i]).collect();
-        let input = Input {
-            sources: &self.sources,
-            statements,
-            overrides: &self.overrides,
-            reads: &self.reads,
-            data: &self.data,
-        };
-        match elaborate::elaborate(&input) {
+        match elaborate::elaborate(&self.input()) {
             Err(errors) => (None, errors.iter().map(CircuitError::diagnostic).collect()),
+            Ok(circuit) if circuit.elements.is_empty() => {
+                let error = Diagnostic::error("there is no element in this circuit")
+                    .at(Span::default(), "")
+                    .help("a path puts one between two nodes: `gnd -( drive: 12 V +)- in`");
+                (None, vec![error])
+            }
             Ok(circuit) => {
                 let found = judge::judge(&circuit);
                 let wrong = found.iter().any(|d| d.severity == Severity::Error);
                 ((!wrong).then_some(circuit), found)
             }
+        }
+    }
+
+    fn input(&self) -> Input<'_> {
+        let statements =
+            self.order.iter().map(|&(file, i)| &self.files[file].statements[i]).collect();
+        Input {
+            sources: &self.sources,
+            statements,
+            overrides: &self.overrides,
+            reads: &self.reads,
+            data: &self.data,
         }
     }
 
@@ -204,6 +214,18 @@ impl Loader<'_> {
 
     fn fail(&mut self, error: CircuitError) {
         self.errors.push(error.diagnostic());
+    }
+
+    /// After a fault in the text, says what else is wrong in the statements that could be read,
+    /// except for names that may be missing because their own statement could not.
+    fn add_circuit_errors(&mut self) {
+        if self.errors.is_empty() {
+            return;
+        }
+        if let Err(errors) = elaborate::elaborate(&self.program.input()) {
+            let own = errors.iter().filter(|error| !error.may_follow_from_others());
+            self.errors.extend(own.map(CircuitError::diagnostic));
+        }
     }
 
     fn take_call(&mut self, call: &Call) {

@@ -2,12 +2,14 @@
 
 use crate::circuit::Circuit;
 use crate::circuit::island::{Islands, Regime};
+use crate::circuit::judge::tied_nodes;
 use crate::cli::options::CommonArgs;
 use crate::cli::output;
 use crate::cli::report::{Ending, Stop};
 use crate::diag::{Diagnostic, Severity};
 use crate::render::check::{CheckPage, Counts};
 use crate::render::{Format, renderer};
+use crate::study::explain;
 use clap::Args;
 
 /// Read and judge a circuit without solving it
@@ -23,11 +25,14 @@ pub struct CheckArgs {
 }
 
 fn counts(circuit: &Circuit) -> Counts {
+    let islands = Islands::find(circuit, Regime::Alternating);
+    // `gnd` is always there, also where no element touches it.
+    let used = tied_nodes(circuit);
     Counts {
-        nodes: circuit.nodes.len(),
+        nodes: used.iter().filter(|used| **used).count(),
         elements: circuit.elements.len(),
         couplings: circuit.couplings.len(),
-        islands: Islands::find(circuit, Regime::Alternating).reference.len(),
+        islands: islands.reference.iter().filter(|node| used[node.index()]).count(),
     }
 }
 
@@ -42,9 +47,19 @@ pub fn run(typed: &CheckArgs) -> Result<Ending, Stop> {
         found.extend(more);
     }
     let wrong = circuit.is_none() || found.iter().any(is_wrong);
+    // Loops of sources and the like show without solving.
+    let mut unsolvable = false;
+    if let Some(circuit) = &circuit {
+        let islands = Islands::find(circuit, Regime::Alternating);
+        let graph = explain::graph(circuit, &islands, Regime::Alternating);
+        unsolvable = !graph.is_empty();
+        found.extend(graph);
+    }
     let format = typed.common.format().unwrap_or(Format::Table);
-    if wrong && format == Format::Table {
-        return Err(Stop::Wrong(found, program.sources));
+    match format == Format::Table {
+        true if wrong => return Err(Stop::Wrong(found, program.sources)),
+        true if unsolvable => return Err(Stop::NoSolution(found, program.sources)),
+        _ => {}
     }
     let page = CheckPage {
         circuit: &circuit_name,
@@ -56,5 +71,9 @@ pub fn run(typed: &CheckArgs) -> Result<Ending, Stop> {
     let mut out = Vec::new();
     renderer(format, typed.common.style()).check(&page, &mut out);
     output::write_all(&out)?;
-    Ok(if wrong { Ending::Refused } else { Ending::Done })
+    Ok(match (wrong, unsolvable) {
+        (true, _) => Ending::Refused,
+        (false, true) => Ending::Unsolvable,
+        (false, false) => Ending::Done,
+    })
 }

@@ -15,6 +15,8 @@ pub enum Ending {
     LimitMissed,
     /// All was said in the output, and the circuit is wrong: exit code 2.
     Refused,
+    /// All was said in the output, and the circuit has no solution: exit code 3.
+    Unsolvable,
 }
 
 /// Why a command could not run to its end.
@@ -55,6 +57,7 @@ pub fn finish(outcome: Result<Ending, Stop>) -> ExitCode {
         Ok(Ending::Done) => 0,
         Ok(Ending::LimitMissed) => 1,
         Ok(Ending::Refused) => 2,
+        Ok(Ending::Unsolvable) => 3,
         Err(Stop::Wrong(found, sources)) => {
             diagnostics(&found, &sources);
             2

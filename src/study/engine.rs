@@ -38,7 +38,7 @@ impl<'c> Engine<'c> {
     /// Finds the equations and their pattern. Fails where they cannot have one solution.
     pub fn new(circuit: &'c Circuit, regime: Regime) -> Result<Self, StudyError> {
         let system = System::new(circuit, regime);
-        let found = explain::graph(circuit, &system, regime);
+        let found = explain::graph(circuit, &system.islands, regime);
         if !found.is_empty() {
             return Err(StudyError::NoSolution(found));
         }

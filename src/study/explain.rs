@@ -1,6 +1,6 @@
 //! Why a circuit has no single solution, in circuit words.
 
-use crate::circuit::island::{Forest, Regime};
+use crate::circuit::island::{Forest, Islands, Regime};
 use crate::circuit::{Circuit, Element, ElementId, Law, NodeId, Phase, Values};
 use crate::diag::Diagnostic;
 use crate::number::{Ball, Balls};
@@ -16,10 +16,10 @@ const MOST_NAMES: usize = 8;
 
 /// Faults that the graph alone shows: loops of voltage sources, and nodes that only current
 /// sources reach.
-pub fn graph(circuit: &Circuit, system: &System, regime: Regime) -> Vec<Diagnostic> {
+pub fn graph(circuit: &Circuit, islands: &Islands, regime: Regime) -> Vec<Diagnostic> {
     let mut found = Vec::new();
     voltage_loops(circuit, regime, &mut found);
-    current_cutsets(circuit, system, regime, &mut found);
+    current_cutsets(circuit, islands, regime, &mut found);
     found
 }
 
@@ -108,7 +108,7 @@ fn loop_error(circuit: &Circuit, around: &[ElementId], regime: Regime) -> Diagno
 
 fn current_cutsets(
     circuit: &Circuit,
-    system: &System,
+    islands: &Islands,
     regime: Regime,
     found: &mut Vec<Diagnostic>,
 ) {
@@ -131,7 +131,7 @@ fn current_cutsets(
             continue;
         }
         for node in [element.left, element.right] {
-            let reference = system.islands.reference_of(node);
+            let reference = islands.reference_of(node);
             let root = forest.root(node);
             if root == forest.root(reference) || reported.contains(&root) {
                 continue;
