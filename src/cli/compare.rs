@@ -7,12 +7,14 @@ use crate::cli::input::{self, Text};
 use crate::cli::options::CommonArgs;
 use crate::cli::output;
 use crate::cli::report::{self, Ending, Stop};
+use crate::cli::swap::HowArgs;
 use crate::diag::{Diagnostic, Severity};
 use crate::render::compare::ComparePage;
 use crate::render::{Format, renderer};
 use crate::study::compare::{self, Plan};
 use crate::study::pair::{Correspondence, Matching};
 use crate::study::prove::{self, Verdict};
+use crate::swap;
 use clap::Args;
 use std::path::{Path, PathBuf};
 
@@ -26,7 +28,9 @@ use std::path::{Path, PathBuf};
 /// With `--prove` it is also decided whether the circuits agree at every frequency above zero.
 /// Exit code 1: not within the limit, or not proved identical.
 ///
-/// Example: bifilar compare charger.bfl by_hand.bfl --from 1kHz --to 1MHz --prove
+/// Example: bifilar compare charger.bfl --into tee --from 1kHz --to 1MHz --prove
+///
+/// Example: bifilar compare charger.bfl by_hand.bfl --from 1kHz --to 1MHz --within 1%
 #[derive(Args, Debug)]
 pub struct CompareArgs {
     #[command(flatten)]
@@ -34,6 +38,8 @@ pub struct CompareArgs {
     /// The other circuit
     #[arg(value_name = "OTHER")]
     other: Option<PathBuf>,
+    #[command(flatten)]
+    how: Option<HowArgs>,
     #[command(flatten)]
     band: BandArgs,
     /// The largest relative difference allowed
@@ -48,18 +54,24 @@ pub struct CompareArgs {
 }
 
 fn ratio(text: &str) -> Result<f64, String> {
-    match text.parse::<f64>() {
+    let (digits, unit) = match text.strip_suffix('%') {
+        Some(percent) => (percent.trim_end(), 0.01),
+        None => (text, 1.0),
+    };
+    match digits.parse::<f64>().map(|ratio| ratio * unit) {
         Ok(ratio) if ratio >= 0.0 && ratio.is_finite() => Ok(ratio),
-        _ => Err("give a ratio, as in 1e-6".to_owned()),
+        _ => Err("give a ratio, as in 1e-6 or 1%".to_owned()),
     }
 }
 
 /// Runs the command.
 pub fn run(typed: &CompareArgs) -> Result<Ending, Stop> {
-    let Some(other) = &typed.other else {
-        let wrong = Diagnostic::error("`compare` has to know what to compare with");
-        return Err(Stop::wrong(wrong.help("give a second file")));
-    };
+    if typed.other.is_some() == typed.how.is_some() {
+        let wrong = Diagnostic::error("`compare` needs one thing to compare with");
+        return Err(Stop::wrong(
+            wrong.help("give a second file, or `--into KIND` for the circuit's own twin"),
+        ));
+    }
     band::judge("compare", &typed.band).map_err(Stop::wrong)?;
     let mut common = typed.common.open()?;
     let plan = Plan {
@@ -69,8 +81,21 @@ pub fn run(typed: &CompareArgs) -> Result<Ending, Stop> {
     };
     let (circuit, found) = common.program.circuit();
     let Some(first) = circuit else { return Err(Stop::Wrong(found, common.program.sources)) };
-    let second = open(other)?;
-    let same = Correspondence::by_names(&first, &second);
+    let (second, same, second_name) = match (&typed.other, &typed.how) {
+        (Some(other), _) => {
+            let second = open(other)?;
+            let same = Correspondence::by_names(&first, &second);
+            (second, same, input::short_name(other))
+        }
+        (None, Some(how)) => {
+            let twin = swap::twin(&first, &how.options())
+                .map_err(|e| Stop::Wrong(vec![e.diagnostic()], common.program.sources.clone()))?;
+            twin.warnings.iter().for_each(|warning| report::note(warning));
+            let same = Correspondence::by_twin(&twin);
+            (twin.circuit, same, format!("its {} twin", how.into))
+        }
+        (None, None) => unreachable!("one of the two was asked for above"),
+    };
     let matching = Matching::new(&first, &second, &same);
     let mut comparison = compare::run(&first, &second, &matching.matched, &plan)
         .map_err(|error| Stop::study(error, &common.program.sources))?;
@@ -81,11 +106,8 @@ pub fn run(typed: &CompareArgs) -> Result<Ending, Stop> {
         comparison.proof = Some(prove::decide(&first, &second, &matching.matched, &options));
     }
     let format = common.format.unwrap_or(Format::Table);
-    let page = ComparePage {
-        first: &common.circuit_name,
-        second: &input::short_name(other),
-        comparison: &comparison,
-    };
+    let page =
+        ComparePage { first: &common.circuit_name, second: &second_name, comparison: &comparison };
     let mut out = Vec::new();
     renderer(format, common.style).comparison(&page, &mut out);
     output::write_all(&out)?;

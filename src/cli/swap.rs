@@ -46,7 +46,7 @@ pub struct SwapArgs {
 pub struct HowArgs {
     /// tee, pi, mesh, leakage or dependent
     #[arg(long, value_name = "KIND")]
-    into: Kind,
+    pub into: Kind,
     /// Replace only the set of these windings, as in `--only dock,buoy`
     #[arg(long, value_name = "WINDINGS", value_delimiter = ',')]
     only: Vec<String>,

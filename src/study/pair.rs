@@ -8,6 +8,7 @@ use crate::quantity::Dimension;
 use crate::study::engine::Engine;
 use crate::study::point::regime_of;
 use crate::study::{StudyError, Value};
+use crate::swap::Twin;
 use std::collections::HashMap;
 
 /// Quantities below this share of the largest of their kind at a frequency are judged against
@@ -70,6 +71,30 @@ impl Correspondence {
             node_of: first.nodes.iter().map(|n| node(&n.names)).collect(),
             element_of: first.elements.iter().map(|e| elements.get(&*e.name).copied()).collect(),
             known: Vec::new(),
+        }
+    }
+
+    /// A circuit and its twin: the twin knows where everything went, and how each replaced winding
+    /// reads there.
+    pub fn by_twin(twin: &Twin) -> Self {
+        let mut known = Vec::new();
+        for reading in &twin.readings {
+            let (id, name) = (reading.winding, &reading.name);
+            let mut both = |word: &str, dimension, first, second| {
+                known.push(Matched {
+                    name: format!("{word}({name})"),
+                    dimension,
+                    first: Quantity::Measure(first),
+                    second: Quantity::Formula(second),
+                });
+            };
+            both("drop", Dimension::VOLTAGE, Measure::Drop(id), reading.drop_formula);
+            both("amps", Dimension::CURRENT, Measure::Amps(id), reading.amps_formula);
+        }
+        Correspondence {
+            node_of: twin.node_of.iter().map(|&node| Some(node)).collect(),
+            element_of: twin.element_of.clone(),
+            known,
         }
     }
 }
