@@ -13,5 +13,6 @@ pub mod render;
 pub mod solve;
 pub mod source;
 pub mod study;
+pub mod swap;
 pub mod system;
 pub mod text;

@@ -56,6 +56,8 @@ pub enum CircuitError {
     Duplicate { thing: Thing, name: String, span: Span, first: Span },
     #[error("no `let` at the top of the file is called `{name}`")]
     UnknownOverride { name: String, near: Option<String>, span: Span },
+    #[error("`{name}` is {} in the circuit, and {} here", unit_words(*own), unit_words(*given))]
+    OverrideDimension { name: String, given: Dimension, own: Dimension, span: Span },
     #[error("nothing is called `{name}` here")]
     UnknownName { name: String, near: Option<String>, element: bool, span: Span },
     #[error("no element is called `{name}`")]
@@ -78,8 +80,8 @@ pub enum CircuitError {
     BlocksTooDeep { most: usize, span: Span },
     #[error("block `{block}` has {} nodes, {given} are given", wanted.len())]
     UseNodeCount { block: String, wanted: Vec<String>, given: usize, span: Span, defined: Span },
-    #[error("the circuit has more than {most} elements")]
-    TooManyElements { most: usize, span: Span },
+    #[error("the circuit is too large: more than {most} of this: {thing}")]
+    TooMany { thing: Thing, most: usize, span: Span },
     #[error("an ideal transformer needs as many turns as windings, and at least two")]
     TurnsCount { windings: usize, turns: usize, span: Span },
     #[error("`let`s that need each other: {}", names.join(" → "))]
@@ -265,12 +267,13 @@ impl CircuitError {
             E::ReadingOfPair { span, .. } => base
                 .at(*span, "")
                 .help("`leakage` and `aiding …, opposing …` hold for a pair; state each pair"),
-            E::IncludeCycle { span, .. }
+            E::OverrideDimension { span, .. }
+            | E::IncludeCycle { span, .. }
             | E::IncludesTooDeep { span, .. }
             | E::Unreadable { span, .. }
             | E::FileOnly { span, .. }
             | E::BlocksTooDeep { span, .. }
-            | E::TooManyElements { span, .. }
+            | E::TooMany { span, .. }
             | E::ArgumentCount { span, .. }
             | E::DimensionTooLarge { span }
             | E::ExponentUnknown { span, .. }

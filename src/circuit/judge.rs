@@ -104,7 +104,7 @@ fn judge_value<'v>(
 }
 
 /// The formulas an element's behaviour rests on.
-fn parts(element: &Element) -> Vec<FormulaId> {
+pub(crate) fn parts(element: &Element) -> Vec<FormulaId> {
     match &element.law {
         Law::Resistor { resistance: a } | Law::Conductance { conductance: a } => vec![*a],
         Law::Winding { inductance, series, .. } => {

@@ -5,6 +5,7 @@ pub mod error;
 pub mod formula;
 pub mod island;
 pub mod judge;
+pub mod print;
 pub mod program;
 pub mod table;
 

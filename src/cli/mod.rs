@@ -9,6 +9,7 @@ mod options;
 mod output;
 mod report;
 mod solve;
+mod swap;
 mod sweep;
 
 use clap::{Parser, Subcommand};
@@ -33,6 +34,7 @@ enum Command {
     Compare(compare::CompareArgs),
     Solve(solve::SolveArgs),
     Sweep(sweep::SweepArgs),
+    Swap(swap::SwapArgs),
 }
 
 /// Runs the program with these arguments, the first being its own name.
@@ -46,6 +48,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> ExitCode {
         Command::Compare(typed) => compare::run(&typed),
         Command::Solve(typed) => solve::run(&typed),
         Command::Sweep(typed) => sweep::run(&typed),
+        Command::Swap(typed) => swap::run(&typed),
     };
     report::finish(outcome)
 }

@@ -6,6 +6,9 @@ use crate::study::StudyError;
 use std::io::{self, IsTerminal, Write};
 use std::process::ExitCode;
 
+/// Diagnostics drawn in one run. Nobody reads more before mending something.
+const MOST_SHOWN: usize = 40;
+
 /// A command that ran to its end.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Ending {
@@ -88,8 +91,11 @@ pub fn usage(error: &clap::Error) -> ExitCode {
 pub fn diagnostics(found: &[Diagnostic], sources: &Sources) {
     let colour = io::stderr().is_terminal()
         && std::env::var_os("NO_COLOR").is_none_or(|value| value.is_empty());
-    for diagnostic in found {
+    for diagnostic in found.iter().take(MOST_SHOWN) {
         say(diagnostic.render(sources, colour).trim_end());
+    }
+    if found.len() > MOST_SHOWN {
+        say(&format!("… and {} more; mend these first", found.len() - MOST_SHOWN));
     }
 }
 

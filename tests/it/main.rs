@@ -6,6 +6,7 @@
 //! - `compare`: two circuits across a band against closed forms
 //! - `prove`: circuits proved identical, told apart, or called undecided
 //! - `reference`: published values from outside the project
+//! - `swap`: circuits with their couplings replaced
 //! - `tidy`: rules of the house
 //! - `support`: solve a circuit text and read values by name
 
@@ -16,4 +17,5 @@ mod examples;
 mod prove;
 mod reference;
 mod support;
+mod swap;
 mod tidy;

@@ -1,7 +1,8 @@
 //! First pass: scopes, nodes, elements and instances get their names and numbers.
 
 use crate::circuit::elaborate::{
-    Block, DEEPEST_BLOCKS, Elaborator, Let, LetState, MOST_ELEMENTS, Pending, ScopeId,
+    Block, DEEPEST_BLOCKS, Elaborator, Let, LetState, MOST_ELEMENTS, MOST_INSTANCES, Pending,
+    ScopeId,
 };
 use crate::circuit::error::{CircuitError, Thing};
 use crate::circuit::{Element, ElementId, GND, Ideal, Law, NodeId, formula::FormulaId};
@@ -59,7 +60,10 @@ impl<'a> Elaborator<'a> {
     fn apply_overrides(&mut self) {
         for (name, value) in self.input.overrides {
             match self.scopes[0].lets.get(&*name.text) {
-                Some(&id) => self.lets[id].value = value,
+                Some(&id) => {
+                    let own = std::mem::replace(&mut self.lets[id].value, value);
+                    self.overridden.push((id, own));
+                }
                 None => {
                     let known = self.scopes[0].lets.keys().copied();
                     let near = did_you_mean(&name.text, known).map(str::to_owned);
@@ -77,7 +81,18 @@ impl<'a> Elaborator<'a> {
 
     fn walk(&mut self, statements: &[&'a ast::Statement], scope: ScopeId, open: &mut Vec<&'a str>) {
         for statement in statements {
+            if self.stopped {
+                return;
+            }
             self.walk_statement(statement, scope, open);
+        }
+    }
+
+    /// Says once that there is too much of something; the walk ends there.
+    fn overfull(&mut self, error: CircuitError) {
+        if !self.stopped {
+            self.stopped = true;
+            self.errors.push(error);
         }
     }
 
@@ -185,9 +200,11 @@ impl<'a> Elaborator<'a> {
             return None;
         }
         if self.elements.len() >= MOST_ELEMENTS {
-            if self.elements.len() == MOST_ELEMENTS {
-                self.errors.push(CircuitError::TooManyElements { most: MOST_ELEMENTS, span });
-            }
+            self.overfull(CircuitError::TooMany {
+                thing: Thing::Element,
+                most: MOST_ELEMENTS,
+                span,
+            });
             return None;
         }
         let id = ElementId(self.elements.len() as u32);
@@ -247,6 +264,10 @@ impl<'a> Elaborator<'a> {
         if open.len() >= DEEPEST_BLOCKS {
             let (most, span) = (DEEPEST_BLOCKS, block.span);
             return self.errors.push(CircuitError::BlocksTooDeep { most, span });
+        }
+        if self.scopes.len() > MOST_INSTANCES {
+            let (thing, most, span) = (Thing::Instance, MOST_INSTANCES, block.span);
+            return self.overfull(CircuitError::TooMany { thing, most, span });
         }
         if nodes.len() != found.nodes.len() {
             return self.errors.push(CircuitError::UseNodeCount {
@@ -352,6 +373,15 @@ impl<'a> Elaborator<'a> {
         }
     }
 
+    /// The name most likely meant. Looked for only while few errors are known: every search goes
+    /// through all names.
+    fn near<'n>(&self, wanted: &str, names: impl Iterator<Item = &'n String>) -> Option<String> {
+        const MOST_SEARCHES: usize = 50;
+        let few = self.errors.len() < MOST_SEARCHES;
+        let names = names.map(String::as_str);
+        if few { did_you_mean(wanted, names).map(str::to_owned) } else { None }
+    }
+
     /// The node a name means in a scope, which must exist; `None` with an error if it does not.
     pub(super) fn known_node(&mut self, scope: ScopeId, name: &ast::Name) -> Option<NodeId> {
         if &*name.text == "gnd" {
@@ -362,8 +392,7 @@ impl<'a> Elaborator<'a> {
         if let Some(&id) = port.or_else(|| self.node_of.get(&full_name)) {
             return Some(id);
         }
-        let near = did_you_mean(&full_name, self.node_of.keys().map(String::as_str));
-        let near = near.map(str::to_owned);
+        let near = self.near(&full_name, self.node_of.keys());
         let (name, span) = (name.text.to_string(), name.span);
         self.errors.push(CircuitError::UnknownNode { name, near, span });
         None
@@ -379,9 +408,7 @@ impl<'a> Elaborator<'a> {
         let ideal = self.element_of.contains_key(&first_winding);
         let near = match ideal {
             true => Some(first_winding),
-            false => {
-                did_you_mean(&full_name, self.element_of.keys().map(String::as_str)).map(Into::into)
-            }
+            false => self.near(&full_name, self.element_of.keys()),
         };
         let (name, span) = (name.text.to_string(), name.span);
         self.errors.push(CircuitError::UnknownElement { name, near, span });

@@ -27,6 +27,9 @@ pub const DEEPEST_BLOCKS: usize = 64;
 /// more than any memory holds.
 pub const MOST_ELEMENTS: usize = 4_000_000;
 
+/// More instances of blocks than this are refused, for the same reason.
+pub const MOST_INSTANCES: usize = 200_000;
+
 /// What elaboration works on.
 pub struct Input<'a> {
     /// Every text, for the data files.
@@ -94,8 +97,12 @@ enum Pending<'a> {
 struct Elaborator<'a> {
     input: &'a Input<'a>,
     errors: Vec<CircuitError>,
+    /// True once there is too much of something to go on.
+    stopped: bool,
     scopes: Vec<Scope<'a>>,
     lets: Vec<Let<'a>>,
+    /// `let`s given another value on the command line, with the value in the circuit.
+    overridden: Vec<(LetId, &'a ast::Expr)>,
     pending: Vec<(ScopeId, Pending<'a>)>,
     tape: Tape,
     tables: HashMap<SourceId, Option<TableId>>,
@@ -122,6 +129,10 @@ pub fn elaborate(input: &Input) -> Result<Circuit, Vec<CircuitError>> {
     let mut work = Elaborator::new(input);
     work.collect();
     work.lower_lets();
+    if !work.overrides_fit() {
+        // Everything that uses the value would be wrong too.
+        return Err(work.errors);
+    }
     work.lower_pending();
     work.finish()
 }
@@ -131,8 +142,10 @@ impl<'a> Elaborator<'a> {
         let mut work = Elaborator {
             input,
             errors: Vec::new(),
+            stopped: false,
             scopes: Vec::new(),
             lets: Vec::new(),
+            overridden: Vec::new(),
             pending: Vec::new(),
             tape: Tape::default(),
             tables: HashMap::new(),
