@@ -4,21 +4,23 @@ use crate::circuit::Circuit;
 use crate::circuit::program::{Call, Program};
 use crate::cli::band::{self, BandArgs};
 use crate::cli::input::{self, Text};
-use crate::cli::options::CommonArgs;
+use crate::cli::options::{Common, CommonArgs};
 use crate::cli::output;
 use crate::cli::report::{self, Ending, Stop};
+use crate::cli::swap::HowArgs;
 use crate::diag::{Diagnostic, Severity};
 use crate::render::compare::ComparePage;
 use crate::render::{Format, renderer};
 use crate::study::compare::{self, Plan};
 use crate::study::pair::{Correspondence, Matching};
 use crate::study::prove::{self, Verdict};
+use crate::swap;
 use clap::Args;
 use std::path::{Path, PathBuf};
 
 /// Compare two circuits over a band of frequencies
 ///
-/// Quantities are matched by the names of nodes, elements and readings; what only one circuit has
+/// OTHER is a second file; with `--into` it is the circuit's own twin. Quantities are matched by the names of nodes, elements and readings; what only one circuit has
 /// is listed. Differences are relative to the larger of both values, or to 1e-9 of the largest
 /// value of the same kind at that frequency. The edges of the bands over which all differences are
 /// within the limit are bisected, not read off the list of frequencies.
@@ -26,14 +28,18 @@ use std::path::{Path, PathBuf};
 /// With `--prove` it is also decided whether the circuits agree at every frequency above zero.
 /// Exit code 1: not within the limit, or not proved identical.
 ///
+/// Example: bifilar compare charger.bfl --into tee --from 1kHz --to 1MHz --prove
+///
 /// Example: bifilar compare charger.bfl by_hand.bfl --from 1kHz --to 1MHz --prove
 #[derive(Args, Debug)]
 pub struct CompareArgs {
     #[command(flatten)]
     common: CommonArgs,
     /// The other circuit
-    #[arg(value_name = "OTHER")]
+    #[arg(value_name = "OTHER", conflicts_with = "into")]
     other: Option<PathBuf>,
+    #[command(flatten)]
+    how: Option<HowArgs>,
     #[command(flatten)]
     band: BandArgs,
     /// The largest relative difference allowed
@@ -56,10 +62,11 @@ fn ratio(text: &str) -> Result<f64, String> {
 
 /// Runs the command.
 pub fn run(typed: &CompareArgs) -> Result<Ending, Stop> {
-    let Some(other) = &typed.other else {
+    if typed.other.is_none() && typed.how.is_none() {
         let wrong = Diagnostic::error("`compare` has to know what to compare with");
-        return Err(Stop::wrong(wrong.help("give a second file")));
-    };
+        let help = "give a second file, or `--into tee` for the circuit's own twin";
+        return Err(Stop::wrong(wrong.help(help)));
+    }
     band::judge("compare", &typed.band).map_err(Stop::wrong)?;
     let mut common = typed.common.open()?;
     let plan = Plan {
@@ -69,8 +76,11 @@ pub fn run(typed: &CompareArgs) -> Result<Ending, Stop> {
     };
     let (circuit, found) = common.program.circuit();
     let Some(first) = circuit else { return Err(Stop::Wrong(found, common.program.sources)) };
-    let second = open(other)?;
-    let same = Correspondence::by_names(&first, &second);
+    let Other { name, circuit: second, same } = match (&typed.other, &typed.how) {
+        (Some(file), _) => open(file, &first)?,
+        (None, Some(how)) => twin(how, &first, &common)?,
+        (None, None) => unreachable!("refused above"),
+    };
     let matching = Matching::new(&first, &second, &same);
     let mut comparison = compare::run(&first, &second, &matching.matched, &plan)
         .map_err(|error| Stop::study(error, &common.program.sources))?;
@@ -81,11 +91,7 @@ pub fn run(typed: &CompareArgs) -> Result<Ending, Stop> {
         comparison.proof = Some(prove::decide(&first, &second, &matching.matched, &options));
     }
     let format = common.format.unwrap_or(Format::Table);
-    let page = ComparePage {
-        first: &common.circuit_name,
-        second: &input::short_name(other),
-        comparison: &comparison,
-    };
+    let page = ComparePage { first: &common.circuit_name, second: &name, comparison: &comparison };
     let mut out = Vec::new();
     renderer(format, common.style).comparison(&page, &mut out);
     output::write_all(&out)?;
@@ -99,13 +105,31 @@ pub fn run(typed: &CompareArgs) -> Result<Ending, Stop> {
     Ok(if comparison.pass && proved { Ending::Done } else { Ending::Different })
 }
 
+/// What the circuit is compared with.
+struct Other {
+    name: String,
+    circuit: Circuit,
+    same: Correspondence,
+}
+
 /// Reads the other circuit.
-fn open(file: &Path) -> Result<Circuit, Stop> {
+fn open(file: &Path, first: &Circuit) -> Result<Other, Stop> {
     let Text { name, text, folder } = input::read(file).map_err(Stop::wrong)?;
     let (program, found) = Program::load(&name, text, &folder, &Call::default(), &input::load);
     if found.iter().any(|d| d.severity == Severity::Error) {
         return Err(Stop::Wrong(found, program.sources));
     }
     let (circuit, found) = program.circuit();
-    circuit.ok_or(Stop::Wrong(found, program.sources))
+    let circuit = circuit.ok_or(Stop::Wrong(found, program.sources))?;
+    let same = Correspondence::by_names(first, &circuit);
+    Ok(Other { name: input::short_name(file), circuit, same })
+}
+
+/// Makes the twin.
+fn twin(how: &HowArgs, first: &Circuit, common: &Common) -> Result<Other, Stop> {
+    let options = how.options();
+    let twin = swap::twin(first, &options).map_err(|error| common.stop(error.diagnostic()))?;
+    twin.warnings.iter().for_each(|warning| report::note(warning));
+    let same = Correspondence::of_twin(&twin);
+    Ok(Other { name: format!("its {}", options.into), circuit: twin.circuit, same })
 }

@@ -8,6 +8,7 @@ use crate::quantity::Dimension;
 use crate::study::engine::Engine;
 use crate::study::point::regime_of;
 use crate::study::{StudyError, Value};
+use crate::swap::Twin;
 use std::collections::HashMap;
 
 /// Quantities below this share of the largest of their kind at a frequency are judged against
@@ -70,6 +71,32 @@ impl Correspondence {
             node_of: first.nodes.iter().map(|n| node(&n.names)).collect(),
             element_of: first.elements.iter().map(|e| elements.get(&*e.name).copied()).collect(),
             known: Vec::new(),
+        }
+    }
+}
+
+impl Correspondence {
+    /// What a circuit has in common with its twin: all but the replaced windings, and how those
+    /// read there.
+    pub fn of_twin(twin: &Twin) -> Self {
+        let mut known = Vec::new();
+        for reading in &twin.readings {
+            let mut add = |name: &str, dimension, first, second| {
+                known.push(Matched {
+                    name: format!("{name}({})", reading.name),
+                    dimension,
+                    first: Quantity::Measure(first),
+                    second: Quantity::Formula(second),
+                });
+            };
+            let winding = reading.winding;
+            add("amps", Dimension::CURRENT, Measure::Amps(winding), reading.amps_formula);
+            add("drop", Dimension::VOLTAGE, Measure::Drop(winding), reading.drop_formula);
+        }
+        Correspondence {
+            node_of: twin.node_of.iter().map(|node| Some(*node)).collect(),
+            element_of: twin.element_of.clone(),
+            known,
         }
     }
 }
