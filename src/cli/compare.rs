@@ -4,7 +4,7 @@ use crate::circuit::Circuit;
 use crate::circuit::program::{Call, Program};
 use crate::cli::band::{self, BandArgs};
 use crate::cli::input::{self, Text};
-use crate::cli::options::CommonArgs;
+use crate::cli::options::{Common, CommonArgs};
 use crate::cli::output;
 use crate::cli::report::{self, Ending, Stop};
 use crate::cli::swap::HowArgs;
@@ -20,7 +20,7 @@ use std::path::{Path, PathBuf};
 
 /// Compare two circuits over a band of frequencies
 ///
-/// Quantities are matched by the names of nodes, elements and readings; what only one circuit has
+/// OTHER is a second file; with `--into` it is the circuit's own twin. Quantities are matched by the names of nodes, elements and readings; what only one circuit has
 /// is listed. Differences are relative to the larger of both values, or to 1e-9 of the largest
 /// value of the same kind at that frequency. The edges of the bands over which all differences are
 /// within the limit are bisected, not read off the list of frequencies.
@@ -30,13 +30,13 @@ use std::path::{Path, PathBuf};
 ///
 /// Example: bifilar compare charger.bfl --into tee --from 1kHz --to 1MHz --prove
 ///
-/// Example: bifilar compare charger.bfl by_hand.bfl --from 1kHz --to 1MHz --within 1%
+/// Example: bifilar compare charger.bfl by_hand.bfl --from 1kHz --to 1MHz --prove
 #[derive(Args, Debug)]
 pub struct CompareArgs {
     #[command(flatten)]
     common: CommonArgs,
     /// The other circuit
-    #[arg(value_name = "OTHER")]
+    #[arg(value_name = "OTHER", conflicts_with = "into")]
     other: Option<PathBuf>,
     #[command(flatten)]
     how: Option<HowArgs>,
@@ -54,23 +54,18 @@ pub struct CompareArgs {
 }
 
 fn ratio(text: &str) -> Result<f64, String> {
-    let (digits, unit) = match text.strip_suffix('%') {
-        Some(percent) => (percent.trim_end(), 0.01),
-        None => (text, 1.0),
-    };
-    match digits.parse::<f64>().map(|ratio| ratio * unit) {
+    match text.parse::<f64>() {
         Ok(ratio) if ratio >= 0.0 && ratio.is_finite() => Ok(ratio),
-        _ => Err("give a ratio, as in 1e-6 or 1%".to_owned()),
+        _ => Err("give a ratio, as in 1e-6".to_owned()),
     }
 }
 
 /// Runs the command.
 pub fn run(typed: &CompareArgs) -> Result<Ending, Stop> {
-    if typed.other.is_some() == typed.how.is_some() {
-        let wrong = Diagnostic::error("`compare` needs one thing to compare with");
-        return Err(Stop::wrong(
-            wrong.help("give a second file, or `--into KIND` for the circuit's own twin"),
-        ));
+    if typed.other.is_none() && typed.how.is_none() {
+        let wrong = Diagnostic::error("`compare` has to know what to compare with");
+        let help = "give a second file, or `--into tee` for the circuit's own twin";
+        return Err(Stop::wrong(wrong.help(help)));
     }
     band::judge("compare", &typed.band).map_err(Stop::wrong)?;
     let mut common = typed.common.open()?;
@@ -81,20 +76,10 @@ pub fn run(typed: &CompareArgs) -> Result<Ending, Stop> {
     };
     let (circuit, found) = common.program.circuit();
     let Some(first) = circuit else { return Err(Stop::Wrong(found, common.program.sources)) };
-    let (second, same, second_name) = match (&typed.other, &typed.how) {
-        (Some(other), _) => {
-            let second = open(other)?;
-            let same = Correspondence::by_names(&first, &second);
-            (second, same, input::short_name(other))
-        }
-        (None, Some(how)) => {
-            let twin = swap::twin(&first, &how.options())
-                .map_err(|e| Stop::Wrong(vec![e.diagnostic()], common.program.sources.clone()))?;
-            twin.warnings.iter().for_each(|warning| report::note(warning));
-            let same = Correspondence::by_twin(&twin);
-            (twin.circuit, same, format!("its {} twin", how.into))
-        }
-        (None, None) => unreachable!("one of the two was asked for above"),
+    let Other { name, circuit: second, same } = match (&typed.other, &typed.how) {
+        (Some(file), _) => open(file, &first)?,
+        (None, Some(how)) => twin(how, &first, &common)?,
+        (None, None) => unreachable!("refused above"),
     };
     let matching = Matching::new(&first, &second, &same);
     let mut comparison = compare::run(&first, &second, &matching.matched, &plan)
@@ -106,8 +91,7 @@ pub fn run(typed: &CompareArgs) -> Result<Ending, Stop> {
         comparison.proof = Some(prove::decide(&first, &second, &matching.matched, &options));
     }
     let format = common.format.unwrap_or(Format::Table);
-    let page =
-        ComparePage { first: &common.circuit_name, second: &second_name, comparison: &comparison };
+    let page = ComparePage { first: &common.circuit_name, second: &name, comparison: &comparison };
     let mut out = Vec::new();
     renderer(format, common.style).comparison(&page, &mut out);
     output::write_all(&out)?;
@@ -121,13 +105,31 @@ pub fn run(typed: &CompareArgs) -> Result<Ending, Stop> {
     Ok(if comparison.pass && proved { Ending::Done } else { Ending::Different })
 }
 
+/// What the circuit is compared with.
+struct Other {
+    name: String,
+    circuit: Circuit,
+    same: Correspondence,
+}
+
 /// Reads the other circuit.
-fn open(file: &Path) -> Result<Circuit, Stop> {
+fn open(file: &Path, first: &Circuit) -> Result<Other, Stop> {
     let Text { name, text, folder } = input::read(file).map_err(Stop::wrong)?;
     let (program, found) = Program::load(&name, text, &folder, &Call::default(), &input::load);
     if found.iter().any(|d| d.severity == Severity::Error) {
         return Err(Stop::Wrong(found, program.sources));
     }
     let (circuit, found) = program.circuit();
-    circuit.ok_or(Stop::Wrong(found, program.sources))
+    let circuit = circuit.ok_or(Stop::Wrong(found, program.sources))?;
+    let same = Correspondence::by_names(first, &circuit);
+    Ok(Other { name: input::short_name(file), circuit, same })
+}
+
+/// Makes the twin.
+fn twin(how: &HowArgs, first: &Circuit, common: &Common) -> Result<Other, Stop> {
+    let options = how.options();
+    let twin = swap::twin(first, &options).map_err(|error| common.stop(error.diagnostic()))?;
+    twin.warnings.iter().for_each(|warning| report::note(warning));
+    let same = Correspondence::of_twin(&twin);
+    Ok(Other { name: format!("its {}", options.into), circuit: twin.circuit, same })
 }

@@ -135,25 +135,31 @@ mod tests {
         shows(
             Format::Table,
             &expect![[r#"
-            charger.bfl against its tee: fails within 1e-3
+                charger.bfl against its tee: fails within 1e-3
 
-            Furthest apart, relative to the larger of both
-              quantity     apart       at       first               second
-              ───────────────────────────────────────────────────────────────────────
-              volts(bus)   9.25e-2 !   85 kHz   5.00000 V  53.13°   5.40833 V  56.31°
-              volts(in)    2.50e-5     85 kHz   5.00000 V  53.13°   5.40833 V  56.31°
+                Furthest apart, relative to the larger of both
+                  quantity     apart     at
+                  ─────────────────────────────────────
+                  volts(bus)   9.25e-2   85 kHz   fails
+                  volts(in)    2.50e-5   85 kHz   holds
 
-            Where it holds
-              from         to
-              ───────────────────────────────
-              10 Hz        4.3215 kHz   holds
-              4.3215 kHz   1 MHz        fails
+                volts(bus) at 85 kHz
+                  circuit   value
+                  ───────────────────────────
+                  first     5.00000 V  53.13°
+                  second    5.40833 V  56.31°
 
-            Proof: identical at every frequency above zero, whatever the sources (chance of error below 2^-117)
+                Where it holds
+                  from         to
+                  ───────────────────────────────
+                  10 Hz        4.3215 kHz   holds
+                  4.3215 kHz   1 MHz        fails
 
-            Not compared
-              node `star` is in the second circuit only
-        "#]],
+                Proof: identical at every frequency above zero, whatever the sources (chance of error below 2^-117)
+
+                Not compared
+                  node `star` is in the second circuit only
+            "#]],
         );
     }
 }

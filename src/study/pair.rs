@@ -74,25 +74,25 @@ impl Correspondence {
         }
     }
 
-    /// A circuit and its twin: the twin knows where everything went, and how each replaced winding
-    /// reads there.
-    pub fn by_twin(twin: &Twin) -> Self {
+    /// What a circuit has in common with its twin: all but the replaced windings, and how those
+    /// read there.
+    pub fn of_twin(twin: &Twin) -> Self {
         let mut known = Vec::new();
         for reading in &twin.readings {
-            let (id, name) = (reading.winding, &reading.name);
-            let mut both = |word: &str, dimension, first, second| {
+            let mut add = |name: &str, dimension, first, second| {
                 known.push(Matched {
-                    name: format!("{word}({name})"),
+                    name: format!("{name}({})", reading.name),
                     dimension,
                     first: Quantity::Measure(first),
                     second: Quantity::Formula(second),
                 });
             };
-            both("drop", Dimension::VOLTAGE, Measure::Drop(id), reading.drop_formula);
-            both("amps", Dimension::CURRENT, Measure::Amps(id), reading.amps_formula);
+            let winding = reading.winding;
+            add("amps", Dimension::CURRENT, Measure::Amps(winding), reading.amps_formula);
+            add("drop", Dimension::VOLTAGE, Measure::Drop(winding), reading.drop_formula);
         }
         Correspondence {
-            node_of: twin.node_of.iter().map(|&node| Some(node)).collect(),
+            node_of: twin.node_of.iter().map(|node| Some(*node)).collect(),
             element_of: twin.element_of.clone(),
             known,
         }

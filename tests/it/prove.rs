@@ -295,3 +295,45 @@ couple p{i}, s{i} : k 0.4\n",
     identical(&ladder(&|i| i), &ladder(&|i| 124 - i));
     assert!(start.elapsed().as_secs() < 10, "{:?}", start.elapsed());
 }
+
+#[test]
+fn every_twin_of_every_circuit_of_the_scenario_is_identical_and_a_rounded_one_is_not() {
+    use bifilar::swap::{self, Kind, Series};
+    let folder = std::path::Path::new(env!("CARGO_MANIFEST_DIR")).join("circuits");
+    let (mut proved, mut told_apart, mut measured) = (0, 0, 0);
+    for entry in std::fs::read_dir(folder).expect("the folder can be listed") {
+        let path = entry.expect("an entry can be read").path();
+        if path.extension().is_none_or(|e| e != "bfl") {
+            continue;
+        }
+        let first = circuit(&std::fs::read_to_string(&path).expect("the file can be read"));
+        for kind in Kind::ALL {
+            let mut options = swap::Options::new(kind);
+            // Refused kinds are the business of `swap`.
+            let Ok(twin) = swap::twin(&first, &options) else { continue };
+            let decide = |twin: &swap::Twin| {
+                let same = Correspondence::of_twin(twin);
+                let matching = Matching::new(&first, &twin.circuit, &same);
+                let options = Options { seed: Some(2), frequencies_hz: vec![1e3, 1e4, 1e5] };
+                prove::decide(&first, &twin.circuit, &matching.matched, &options).verdict
+            };
+            match decide(&twin) {
+                Verdict::Identical { .. } => proved += 1,
+                Verdict::Undecided(why) if why.starts_with("measured") => measured += 1,
+                other => panic!("{} into {kind}: {other:?}", path.display()),
+            }
+            options.round = "E6".parse::<Series>().ok();
+            assert!(options.round.is_some());
+            if let (Kind::Tee | Kind::Pi, Ok(rounded)) = (kind, swap::twin(&first, &options)) {
+                match decide(&rounded) {
+                    Verdict::Different(_) => told_apart += 1,
+                    // A value that is some other function of f leaves differences open.
+                    Verdict::Undecided(why)
+                        if why.starts_with("measured") || why.contains("functions") => {}
+                    other => panic!("{} rounded: {other:?}", path.display()),
+                }
+            }
+        }
+    }
+    assert!(proved >= 20 && told_apart >= 4, "{proved} {told_apart} {measured}");
+}

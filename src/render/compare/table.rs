@@ -23,19 +23,13 @@ pub fn table(page: &ComparePage<'_>, style: Style, out: &mut Vec<u8>) {
     let shown = &order[..order.len().min(MOST_ROWS)];
     if !shown.is_empty() {
         text.push_str("Furthest apart, relative to the larger of both\n");
-        let value = |worst: &Worst, value: Value| {
-            let value = style.shown(value, worst.dimension, worst.frequency_hz);
-            phasor(value, &unit_of(worst.dimension, false), false, style, None)
-        };
-        let mark = |w: &&Worst| format!("{:.2e}{}", w.relative, if w.pass { "" } else { " !" });
         let at = |w: &&Worst| exact(w.frequency_hz, EDGE_DIGITS, "Hz").flat();
         draw(
             vec![
                 words("quantity", shown.iter().map(|w| w.quantity.clone())),
-                words("apart", shown.iter().map(mark)),
+                words("apart", shown.iter().map(|w| format!("{:.2e}", w.relative))),
                 words("at", shown.iter().map(at)),
-                numbers("first", shown.iter().map(|w| value(w, w.first))),
-                numbers("second", shown.iter().map(|w| value(w, w.second))),
+                words("", shown.iter().map(|w| verdict(w.pass))),
             ],
             &mut text,
         );
@@ -43,6 +37,9 @@ pub fn table(page: &ComparePage<'_>, style: Style, out: &mut Vec<u8>) {
             let more = order.len() - shown.len();
             text.push_str(&format!("  and {more} more, no further apart than these\n\n"));
         }
+    }
+    if let Some(i) = found.worst {
+        furthest(&found.quantities[i], style, &mut text);
     }
     bands(&found.bands, &mut text);
     if let Some(proof) = &found.proof {
@@ -60,6 +57,27 @@ pub fn table(page: &ComparePage<'_>, style: Style, out: &mut Vec<u8>) {
     out.push(b'\n');
 }
 
+fn verdict(pass: bool) -> String {
+    if pass { "holds" } else { "fails" }.to_owned()
+}
+
+/// Both values of the quantity that is furthest apart.
+fn furthest(worst: &Worst, style: Style, text: &mut String) {
+    let value = |value: Value| {
+        let value = style.shown(value, worst.dimension, worst.frequency_hz);
+        phasor(value, &unit_of(worst.dimension, false), false, style, None)
+    };
+    let at = exact(worst.frequency_hz, EDGE_DIGITS, "Hz").flat();
+    text.push_str(&format!("{} at {at}\n", worst.quantity));
+    draw(
+        vec![
+            words("circuit", ["first".to_owned(), "second".to_owned()]),
+            numbers("value", [value(worst.first), value(worst.second)]),
+        ],
+        text,
+    );
+}
+
 fn bands(bands: &[Band], text: &mut String) {
     if bands.is_empty() {
         return;
@@ -70,7 +88,7 @@ fn bands(bands: &[Band], text: &mut String) {
         vec![
             words("from", bands.iter().map(|band| edge(band.from_hz))),
             words("to", bands.iter().map(|band| edge(band.to_hz))),
-            words("", bands.iter().map(|b| if b.pass { "holds" } else { "fails" }.to_owned())),
+            words("", bands.iter().map(|b| verdict(b.pass))),
         ],
         text,
     );
