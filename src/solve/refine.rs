@@ -2,8 +2,9 @@
 //! solution and the residual in twofold precision, the corrections from the double factors.
 //!
 //! Bounds rest on e − d = (I − M⁻¹A)·e − M⁻¹·δ, where e is the error, M the factored matrix, d the
-//! computed correction and δ the rounding of the residual. The norm of the first factor is taken
-//! from the corrections seen and from a vector close to the worst one.
+//! computed correction and δ the rounding of the residual. The norm of the first factor is the
+//! largest of what the corrections show, what a vector close to the worst one shows, and what
+//! rounding is expected to make of it.
 
 use crate::number::ComplexTwofold;
 use crate::solve::condition;
@@ -63,7 +64,10 @@ pub(crate) fn solve(
     let step = limits::TWOFOLD_STEP * (solver.work.longest_row + 2) as f64;
     let rounding = step * limits::ESTIMATOR_SAFETY;
     let floor = 2.0 * rounding * condition;
-    let ended = iterate(solver, exact_values, exact_rhs, x, (floor, probe_contraction))?;
+    // One right-hand side may never meet the worst direction, so theory has a say too.
+    let expected = (limits::EXPECTED_CONTRACTION * condition).min(limits::SLOWEST_CONTRACTION);
+    let least_contraction = probe_contraction.max(expected);
+    let ended = iterate(solver, exact_values, exact_rhs, x, (floor, least_contraction))?;
     let relative_error = bound(solver, exact_rhs, x, error, (rounding, floor), &ended);
     Ok(Trust { steps: ended.steps, contraction: ended.contraction, condition, relative_error })
 }
@@ -221,13 +225,13 @@ fn correct(solver: &mut Solver) {
 }
 
 /// Refines until what the last correction leaves is small. `floor` is what rounding of the residual
-/// can cause, relative to the solution; `probed` the contraction of the worst direction known.
+/// can cause, relative to the solution; no contraction below `least_contraction` is believed.
 fn iterate(
     solver: &mut Solver,
     exact_values: &[ComplexTwofold],
     exact_rhs: &[ComplexTwofold],
     x: &mut [ComplexTwofold],
-    (floor, probed): (f64, f64),
+    (floor, least_contraction): (f64, f64),
 ) -> Result<Ended, SolveError> {
     x.fill(ComplexTwofold::ZERO);
     let mut seen: f64 = 0.0;
@@ -249,7 +253,7 @@ fn iterate(
             seen = seen.max(ratio);
         }
         let contraction = (seen * limits::CONTRACTION_SAFETY)
-            .max(probed)
+            .max(least_contraction)
             .clamp(limits::UNIT, limits::LARGEST_CONTRACTION);
         let ended = Ended { steps, contraction, solution_size, correction_size };
         let left = contraction / (1.0 - contraction) * correction_size;
