@@ -177,8 +177,11 @@ pub struct Unit {
     pub conversion: Conversion,
 }
 
+/// A prefix as written, as spoken, and its power of ten.
+pub type Prefix = (&'static str, &'static str, i32);
+
 /// The SI prefixes with their spoken names and powers of ten; micro in all three spellings.
-pub const PREFIXES: [(&str, &str, i32); 26] = [
+pub const PREFIXES: [Prefix; 26] = [
     ("Q", "quetta", 30),
     ("R", "ronna", 27),
     ("Y", "yotta", 24),
@@ -251,13 +254,17 @@ const SYMBOLS: [Symbol; 20] = [
 ];
 
 /// Splits a whole word into a prefix and a unit symbol. No word splits in two ways: a test says so.
-fn split(word: &str) -> Option<(Option<&'static (&'static str, &'static str, i32)>, &Symbol)> {
-    if let Some(symbol) = SYMBOLS.iter().find(|s| s.written == word) {
-        return Some((None, symbol));
+fn split(word: &str) -> Option<(Option<&'static Prefix>, &'static Symbol)> {
+    /// Names of values pass here too: most are told apart by their last byte.
+    fn ends(word: &str, symbol: &Symbol) -> bool {
+        word.as_bytes().last() == symbol.written.as_bytes().last()
     }
-    PREFIXES.iter().find_map(|prefix| {
-        let rest = word.strip_prefix(prefix.0)?;
-        let symbol = SYMBOLS.iter().find(|s| s.prefixed && s.written == rest)?;
+    SYMBOLS.iter().filter(|symbol| ends(word, symbol)).find_map(|symbol| {
+        let before = word.strip_suffix(symbol.written)?;
+        if before.is_empty() {
+            return Some((None, symbol));
+        }
+        let prefix = PREFIXES.iter().find(|prefix| symbol.prefixed && prefix.0 == before)?;
         Some((Some(prefix), symbol))
     })
 }
@@ -302,16 +309,26 @@ impl Unit {
             return None;
         }
         let folded = word.to_lowercase();
-        let spoken =
-            SYMBOLS.iter().find(|s| folded == s.spoken || folded == format!("{}s", s.spoken));
-        if let Some(symbol) = spoken {
-            return Some(symbol.written.to_owned());
+        // A prefix alone, as on drawings.
+        match word {
+            "k" | "M" | "G" => return Some(format!("{word}\u{3a9}")),
+            "u" | "\u{b5}" | "\u{3bc}" | "n" | "p" => return Some(format!("{word}F")),
+            "R" => return Some("\u{3a9}".to_owned()),
+            _ => {}
         }
         // Only the case differs: the first letter written as it stands weighs most.
-        let mut same: Vec<String> = all.filter(|unit| unit.to_lowercase() == folded).collect();
+        // Where every letter differs, it is some other unit: `Pa` is not `pA`.
+        let kept = |unit: &str| unit.chars().zip(word.chars()).any(|(a, b)| a == b);
+        let alike =
+            |unit: &String| unit.to_lowercase() == folded && (kept(unit) || unit.len() == 1);
+        let mut same: Vec<String> = all.filter(alike).collect();
         let first = word.chars().next();
         same.sort_by_key(|unit| unit.chars().next() != first);
-        same.into_iter().next()
+        let spoken = || {
+            let singular = folded.strip_suffix('s').unwrap_or(&folded);
+            SYMBOLS.iter().find(|s| s.spoken == folded || s.spoken == singular)
+        };
+        same.into_iter().next().or_else(|| spoken().map(|symbol| symbol.written.to_owned()))
     }
 
     /// The unit of a product; `None` where it cannot be kept.
@@ -401,8 +418,11 @@ mod tests {
             ("Mhz", Some("MHz")),
             ("UF", Some("uF")),
             ("Ohm", Some("ohm")),
-            ("ohms", Some("ohm")),
+            ("ohms", Some("\u{3a9}")),
             ("Volts", Some("V")),
+            ("k", Some("k\u{3a9}")),
+            ("n", Some("nF")),
+            ("R", Some("\u{3a9}")),
             ("dB", None),
             ("Pa", None),
         ];

@@ -56,6 +56,8 @@ pub enum CircuitError {
     Duplicate { thing: Thing, name: String, span: Span, first: Span },
     #[error("no `let` at the top of the file is called `{name}`")]
     UnknownOverride { name: String, near: Option<String>, span: Span },
+    #[error("`{name}` is {} in the circuit, and {} here", unit_words(*own), unit_words(*given))]
+    OverrideDimension { name: String, given: Dimension, own: Dimension, span: Span },
     #[error("nothing is called `{name}` here")]
     UnknownName { name: String, near: Option<String>, element: bool, span: Span },
     #[error("no element is called `{name}`")]
@@ -265,7 +267,8 @@ impl CircuitError {
             E::ReadingOfPair { span, .. } => base
                 .at(*span, "")
                 .help("`leakage` and `aiding …, opposing …` hold for a pair; state each pair"),
-            E::IncludeCycle { span, .. }
+            E::OverrideDimension { span, .. }
+            | E::IncludeCycle { span, .. }
             | E::IncludesTooDeep { span, .. }
             | E::Unreadable { span, .. }
             | E::FileOnly { span, .. }

@@ -1,7 +1,9 @@
 //! The command line: what can be typed, and which command runs. One file per command: it reads,
 //! calls the library and renders; only `report` prints diagnostics and chooses exit codes.
 
+mod band;
 mod check;
+mod compare;
 mod input;
 mod options;
 mod output;
@@ -29,6 +31,7 @@ struct Cli {
 #[derive(Subcommand)]
 enum Command {
     Check(check::CheckArgs),
+    Compare(compare::CompareArgs),
     Solve(solve::SolveArgs),
     Sweep(sweep::SweepArgs),
     Swap(swap::SwapArgs),
@@ -42,6 +45,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> ExitCode {
     };
     let outcome = match cli.command {
         Command::Check(typed) => check::run(&typed),
+        Command::Compare(typed) => compare::run(&typed),
         Command::Solve(typed) => solve::run(&typed),
         Command::Sweep(typed) => sweep::run(&typed),
         Command::Swap(typed) => swap::run(&typed),

@@ -16,6 +16,8 @@ pub enum Ending {
     Done,
     /// A reading missed a limit: exit code 1.
     LimitMissed,
+    /// Two circuits are not the same: exit code 1.
+    Different,
     /// All was said in the output, and the circuit is wrong: exit code 2.
     Refused,
     /// All was said in the output, and the circuit has no solution: exit code 3.
@@ -58,7 +60,7 @@ impl From<io::Error> for Stop {
 pub fn finish(outcome: Result<Ending, Stop>) -> ExitCode {
     let code = match outcome {
         Ok(Ending::Done) => 0,
-        Ok(Ending::LimitMissed) => 1,
+        Ok(Ending::LimitMissed | Ending::Different) => 1,
         Ok(Ending::Refused) => 2,
         Ok(Ending::Unsolvable) => 3,
         Err(Stop::Wrong(found, sources)) => {

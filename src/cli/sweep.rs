@@ -3,7 +3,8 @@
 mod plan;
 mod rows;
 
-use crate::cli::options::{CommonArgs, typed_value};
+use crate::cli::band::{self, BandArgs};
+use crate::cli::options::CommonArgs;
 use crate::cli::report::{Ending, Stop};
 use crate::diag::Diagnostic;
 use crate::render::{Format, renderer};
@@ -24,25 +25,8 @@ use std::io::{self, IsTerminal};
 pub struct SweepArgs {
     #[command(flatten)]
     common: CommonArgs,
-    /// Where the band begins
-    #[arg(long, value_name = "FREQUENCY", value_parser = typed_value, allow_hyphen_values = true)]
-    from: Option<String>,
-    /// Where the band ends
-    #[arg(long, value_name = "FREQUENCY", value_parser = typed_value, allow_hyphen_values = true)]
-    to: Option<String>,
-    /// Points in every factor of ten (100 if nothing else is said)
-    #[arg(long, value_name = "N", conflicts_with = "points")]
-    per_decade: Option<usize>,
-    /// Points in the whole band
-    #[arg(long, value_name = "N")]
-    points: Option<usize>,
-    /// Equal distances instead of equal ratios
-    #[arg(long, requires = "points")]
-    linear: bool,
-    /// Single frequencies, as in `--at 50Hz,150Hz,250Hz`
-    #[arg(long, value_name = "LIST", value_parser = typed_value, allow_hyphen_values = true,
-          conflicts_with_all = ["from", "to", "per_decade", "points"])]
-    at: Option<String>,
+    #[command(flatten)]
+    band: BandArgs,
     /// Values for a `let`, evenly spaced, as in `--vary L=200uH..300uH:11`
     #[arg(long, value_name = "NAME=A..B:N", value_parser = plan::typed_range,
           allow_hyphen_values = true)]
@@ -51,7 +35,7 @@ pub struct SweepArgs {
 
 /// Runs the command.
 pub fn run(typed: &SweepArgs) -> Result<Ending, Stop> {
-    plan::judge_band(typed).map_err(Stop::wrong)?;
+    band::judge("sweep", &typed.band).map_err(Stop::wrong)?;
     let mut common = typed.common.open()?;
     let plan = plan::plan(typed, &mut common)?;
     let (circuit, found) = common.program.circuit();

@@ -4,6 +4,9 @@ pub mod ball;
 pub mod balls;
 pub mod complex;
 mod elementary;
+pub mod exact;
+pub mod prime;
+pub mod residues;
 #[cfg(test)]
 mod tests;
 pub mod twofold;
@@ -11,6 +14,7 @@ pub mod twofold;
 pub use crate::number::ball::Ball;
 pub use crate::number::balls::Balls;
 pub use crate::number::complex::ComplexTwofold;
+pub use crate::number::residues::Residues;
 pub use crate::number::twofold::Twofold;
 
 use crate::quantity::Decimal;

@@ -2,6 +2,7 @@
 
 use crate::quantity::Dimension;
 use crate::render::check::CheckPage;
+use crate::render::compare::{self, ComparePage};
 use crate::render::number::decibels;
 use crate::render::{Form, Render, SolvedPage, Style, ascii_unit, unit_of};
 use crate::study::{NodeResult, Solution, SweepHead, SweepRow, Value};
@@ -166,6 +167,10 @@ impl Render for Csv {
             }
         }
         out.push(b'\n');
+    }
+
+    fn comparison(&mut self, page: &ComparePage<'_>, out: &mut Vec<u8>) {
+        compare::csv(page, self.style, out);
     }
 
     fn check(&mut self, page: &CheckPage<'_>, out: &mut Vec<u8>) {

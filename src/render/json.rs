@@ -2,6 +2,7 @@
 
 use crate::quantity::Dimension;
 use crate::render::check::CheckPage;
+use crate::render::compare::{self, ComparePage};
 use crate::render::{Render, SolvedPage, Style, unit_of};
 use crate::study::{ElementResult, SweepHead, SweepRow, Value};
 use num_complex::Complex64;
@@ -189,6 +190,10 @@ impl Render for Json {
 
     fn sweep_row(&mut self, row: &SweepRow, out: &mut Vec<u8>) {
         line(&Line { style: self.style, head: &self.head, row }, out);
+    }
+
+    fn comparison(&mut self, page: &ComparePage<'_>, out: &mut Vec<u8>) {
+        compare::json(page, self.style, out);
     }
 
     fn check(&mut self, page: &CheckPage<'_>, out: &mut Vec<u8>) {

@@ -2,6 +2,7 @@
 
 pub mod check;
 pub mod columns;
+pub mod compare;
 pub mod csv;
 pub mod json;
 pub mod number;
@@ -87,6 +88,8 @@ pub trait Render {
     fn sweep_row(&mut self, row: &SweepRow, out: &mut Vec<u8>);
     /// What a check found.
     fn check(&mut self, page: &check::CheckPage<'_>, out: &mut Vec<u8>);
+    /// Two circuits compared.
+    fn comparison(&mut self, page: &compare::ComparePage<'_>, out: &mut Vec<u8>);
 }
 
 /// The renderer for a format.

@@ -3,6 +3,7 @@
 use crate::quantity::Dimension;
 use crate::render::check::CheckPage;
 use crate::render::columns::{draw, numbers, phasor, words};
+use crate::render::compare::{self, ComparePage};
 use crate::render::number::{Bounded, Scale, Text, engineering, exact};
 use crate::render::sweep_table::SweepTable;
 use crate::render::{Render, SolvedPage, Style, unit_of};
@@ -225,6 +226,10 @@ impl Render for Table {
 
     fn sweep_row(&mut self, row: &SweepRow, out: &mut Vec<u8>) {
         self.sweep.row(row, out);
+    }
+
+    fn comparison(&mut self, page: &ComparePage<'_>, out: &mut Vec<u8>) {
+        compare::table(page, self.style, out);
     }
 
     fn check(&mut self, page: &CheckPage<'_>, out: &mut Vec<u8>) {

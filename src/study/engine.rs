@@ -2,7 +2,8 @@
 
 use crate::circuit::island::Regime;
 use crate::circuit::{
-    Circuit, Drive, ElementId, Fault, FormulaId, Law, Measure, NodeId, Phase, Values, judge,
+    Circuit, Drive, ElementId, Fault, FormulaId, Law, Measure, NodeId, Operation, Phase, Values,
+    judge,
 };
 use crate::number::{Ball, Balls};
 use crate::number::{ComplexTwofold, Field, FieldError};
@@ -22,7 +23,8 @@ pub struct Engine<'c> {
     solver: Option<Solver>,
     /// The formulas to evaluate at each frequency, and after each solution.
     of_frequency: Vec<FormulaId>,
-    of_solution: Vec<FormulaId>,
+    of_solution: Vec<(FormulaId, Option<Measure>)>,
+    measured: Vec<Option<Result<Ball, FieldError>>>,
     values: Values<Ball>,
     frequency: Ball,
     entries: Vec<Ball>,
@@ -32,6 +34,8 @@ pub struct Engine<'c> {
     rounded: Vec<Complex64>,
     solution: Vec<ComplexTwofold>,
     error: Vec<f64>,
+    input_radius: Vec<f64>,
+    input_change: Vec<Complex64>,
 }
 
 impl<'c> Engine<'c> {
@@ -51,12 +55,21 @@ impl<'c> Engine<'c> {
                 StudyError::NoSolution(explain::singular(circuit, &system, None, &error, None))
             })?),
         };
+        let measure = |id: FormulaId| match system.tape.get(id).operation {
+            Operation::Measure(measure) => Some(measure),
+            _ => None,
+        };
+        let of_solution =
+            system.tape.of_phase(Phase::Solution).into_iter().map(|id| (id, measure(id))).collect();
         let zero = Ball::exact(ComplexTwofold::ZERO);
         let entries = system.row.len();
         Ok(Engine {
             circuit,
             of_frequency: system.tape.of_phase(Phase::Frequency),
-            of_solution: system.tape.of_phase(Phase::Solution),
+            of_solution,
+            measured: Vec::new(),
+            input_change: Vec::new(),
+            input_radius: Vec::new(),
             values: system.tape.evaluate_constants(&Balls),
             frequency: zero,
             entries: vec![zero; entries],
@@ -144,7 +157,9 @@ impl<'c> Engine<'c> {
         }
         let Some(solver) = &mut self.solver else { return };
         let n = self.solution.len();
-        let mut off: Vec<f64> = self.rhs.iter().map(|ball| ball.radius).collect();
+        let off = &mut self.input_radius;
+        off.clear();
+        off.extend(self.rhs.iter().map(|ball| ball.radius));
         for column in 0..n {
             let size = self.solution[column].norm();
             for at in self.system.column_start[column]..self.system.column_start[column + 1] {
@@ -153,49 +168,43 @@ impl<'c> Engine<'c> {
         }
         for pattern in 0..2usize {
             let sign = |i: usize| if (i >> pattern) & 1 == 0 { 1.0 } else { -1.0 };
-            let mut change: Vec<Complex64> =
-                off.iter().enumerate().map(|(i, r)| Complex64::new(sign(i) * r, 0.0)).collect();
-            solver.solve_in_place(&mut change);
-            for (error, change) in self.error.iter_mut().zip(&change) {
+            let change = &mut self.input_change;
+            change.clear();
+            change.extend(off.iter().enumerate().map(|(i, r)| Complex64::new(sign(i) * r, 0.0)));
+            solver.solve_in_place(change);
+            for (error, change) in self.error.iter_mut().zip(change) {
                 *error += 2.0 * change.norm();
             }
         }
     }
 
     fn evaluate_readings(&mut self) {
-        let mut values = std::mem::take(&mut self.values);
-        let which = std::mem::take(&mut self.of_solution);
-        let frequency = self.frequency;
-        // Measures read constants and admittances, which stand in `values` while it is written:
-        // they are all evaluated before the first formula of the solution.
-        self.values = values;
-        let measured: Vec<_> = which
-            .iter()
-            .map(|&id| match self.system.tape.get(id).operation {
-                crate::circuit::Operation::Measure(measure) => Some(self.measure(measure)),
-                _ => None,
-            })
-            .collect();
-        values = std::mem::take(&mut self.values);
-        for (&id, measured) in which.iter().zip(measured) {
+        // Measures read constants and admittances out of `values`, so all of them are taken
+        // before the first formula of the solution is written there.
+        let mut measured = std::mem::take(&mut self.measured);
+        measured.clear();
+        for &(_, measure) in &self.of_solution {
+            measured.push(measure.map(|measure| self.measure(measure)));
+        }
+        let tape = &self.system.tape;
+        for (&(id, _), measured) in self.of_solution.iter().zip(&measured) {
             match measured {
                 Some(result) => {
-                    values[id.index()] = result.map_err(|error| Fault { at: id, error });
+                    self.values[id.index()] = result.map_err(|error| Fault { at: id, error });
                 }
                 None => {
-                    self.system.tape.evaluate_phase(&Balls, &[id], &frequency, &mut values, |_| {
+                    tape.evaluate_phase(&Balls, &[id], &self.frequency, &mut self.values, |_| {
                         Err(FieldError::Undecided)
                     })
                 }
             }
         }
-        self.values = values;
-        self.of_solution = which;
+        self.measured = measured;
     }
 
     /// The value of a formula at the frequency solved last.
     pub fn value(&self, id: FormulaId) -> Result<Ball, Fault> {
-        self.values[id.index()].clone()
+        self.values[id.index()]
     }
 
     /// Voltage of a node against the reference of its island.

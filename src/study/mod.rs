@@ -1,9 +1,12 @@
 //! Studies: a circuit and a question in, plain results out. Nothing here prints.
 
+pub mod compare;
 pub mod engine;
 pub mod explain;
 pub mod grid;
+pub mod pair;
 pub mod point;
+pub mod prove;
 pub mod sweep;
 
 use crate::diag::Diagnostic;

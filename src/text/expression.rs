@@ -11,7 +11,7 @@ use crate::text::lexis::{
     text, word, word_here,
 };
 use crate::text::number::{number, unit, unit_word};
-use crate::text::words::{FUNCTIONS, JOINTS, READINGS};
+use crate::text::words::{FUNCTIONS, JOINTS, READINGS, is_usual_unit};
 use nom::Parser;
 use nom::branch::alt;
 use nom::combinator::{opt, value};
@@ -27,6 +27,7 @@ pub fn expression(input: Cursor<'_>) -> Read<'_, Expr> {
     let mut terms = Vec::new();
     while let (after, Some(operator)) = opt(sum_operator).parse(rest)? {
         let (after, term) = operand(input, product).parse(after)?;
+        start_small(&mut terms);
         terms.push((operator, term));
         rest = after;
     }
@@ -35,6 +36,13 @@ pub fn expression(input: Cursor<'_>) -> Read<'_, Expr> {
     };
     let span = first.span.to(last.span);
     Ok((rest, Expr { kind: ExprKind::Sum(Box::new(first), terms), span }))
+}
+
+/// Most chains have one link: room for more is made when they come.
+fn start_small<T>(chain: &mut Vec<T>) {
+    if chain.is_empty() {
+        chain.reserve_exact(1);
+    }
 }
 
 fn sum_operator(input: Cursor<'_>) -> Read<'_, SumOperator> {
@@ -51,6 +59,7 @@ fn product(input: Cursor<'_>) -> Read<'_, Expr> {
     let mut factors = Vec::new();
     while let (after, Some(operator)) = opt(product_operator).parse(rest)? {
         let (after, factor) = operand(input, signed).parse(after)?;
+        start_small(&mut factors);
         factors.push((operator, factor));
         rest = after;
     }
@@ -194,7 +203,7 @@ fn call_or_name(start: Cursor<'_>) -> Read<'_, Expr> {
         let name = found.to_owned();
         return Err(failure(TextError::FunctionWithoutBrackets { name, span }));
     }
-    if Unit::from_symbol(found).is_some() {
+    if is_usual_unit(found) {
         return Err(lone_unit(start));
     }
     if !called {

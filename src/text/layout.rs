@@ -72,17 +72,30 @@ fn line_end(text: &str, at: usize) -> usize {
     text[at..].find('\n').map_or(text.len(), |length| at + length)
 }
 
-/// The brackets that are never closed, by their offsets, in order.
-fn unclosed(text: &str) -> Vec<u32> {
+/// A bracket that is never closed.
+#[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
+struct Unclosed {
+    at: u32,
+    /// The bracket to show: it took the `)` of `)-` that was meant for this one, or is this one.
+    shown: u32,
+}
+
+/// The brackets that are never closed, in order.
+fn unclosed(text: &str) -> Vec<Unclosed> {
     let bytes = text.as_bytes();
-    let mut open: Vec<u32> = Vec::new();
+    let mut open: Vec<Unclosed> = Vec::new();
     let mut found = Vec::new();
     let mut at = body_start(text);
     while let Some(&byte) = bytes.get(at) {
         match byte {
-            b'(' | b'[' => open.push(at as u32),
+            b'(' | b'[' => open.push(Unclosed { at: at as u32, shown: at as u32 }),
             b')' | b']' => {
-                open.pop();
+                let inner = open.pop().filter(|_| leads_to_node(&text[at + 1..]));
+                if let (Some(inner), Some(outer)) = (inner, open.last_mut())
+                    && outer.shown == outer.at
+                {
+                    outer.shown = inner.at;
+                }
             }
             // Braces never stand inside brackets.
             b'{' | b'}' => found.append(&mut open),
@@ -105,6 +118,12 @@ fn unclosed(text: &str) -> Vec<u32> {
     found.append(&mut open);
     found.sort_unstable();
     found
+}
+
+/// Whether what follows a `)` makes it the end of an element: a dash, a blank and no number.
+fn leads_to_node(rest: &str) -> bool {
+    let blank = rest.strip_prefix("- ").map(str::trim_ascii_start);
+    blank.is_some_and(|node| node.starts_with(|c: char| is_name_char(c) && !c.is_numeric()))
 }
 
 /// Whether a line can only be the start of a statement, never a part of an expression.
@@ -148,7 +167,7 @@ struct Cut<'a> {
     depth: usize,
     broken: bool,
     /// Offsets of the brackets still ahead that never get closed.
-    unclosed: &'a [u32],
+    unclosed: &'a [Unclosed],
     pieces: Vec<Piece>,
     errors: Vec<TextError>,
 }
@@ -217,13 +236,13 @@ impl Cut<'_> {
 
     fn open(&mut self) {
         match self.unclosed {
-            [first, rest @ ..] if *first as usize == self.at => {
+            [first, rest @ ..] if first.at as usize == self.at => {
                 self.unclosed = rest;
+                let shown = first.shown as usize;
                 // In a link the dash is part of the bracket.
-                let dash =
-                    self.at > 0 && self.end == self.at && self.text[..self.at].ends_with('-');
-                let start = self.at - usize::from(dash && self.start != Some(self.at));
-                let span = Span::new(self.source, start, self.at + 1);
+                let link = shown == self.at
+                    && self.start.is_some_and(|start| self.text[start..shown].ends_with('-'));
+                let span = Span::new(self.source, shown - usize::from(link), shown + 1);
                 self.fault(TextError::UnclosedBracket { span });
             }
             _ => self.depth += 1,

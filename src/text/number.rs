@@ -1,5 +1,6 @@
 //! Numbers as they are written: decimals, IEC 60062 marks, imaginary numbers, and units.
 
+use crate::diag::did_you_mean;
 use crate::quantity::{Conversion, Decimal, Dimension, Unit};
 use crate::text::ast::{Expr, ExprKind};
 use crate::text::cursor::{Cursor, Read, failure, other};
@@ -39,10 +40,11 @@ pub fn number(start: Cursor<'_>) -> Read<'_, Expr> {
         let value = kept(&written, 0, start.span_to(rest))?;
         return Ok((rest, Expr { kind: ExprKind::Imaginary(value), span }));
     }
-    if written.fraction.is_none() && written.exponent.is_none() {
-        if let Some(mark) = marked(start, rest, written.whole) {
-            return mark;
-        }
+    if written.fraction.is_none()
+        && written.exponent.is_none()
+        && let Some(mark) = marked(start, rest, written.whole)
+    {
+        return mark;
     }
     let (rest, unit) = match unit(spaces(rest))? {
         (after, Some(unit)) => (after, Some(unit)),
@@ -108,6 +110,10 @@ fn kept(
         return Err(too_small());
     }
     let value = Decimal { mantissa, exponent: exponent as i32 };
+    // Far from both ends of the range nothing needs to be computed.
+    if (-150..150).contains(&exponent) && unit_power.abs() < 100 {
+        return Ok(value);
+    }
     for power in [0, unit_power] {
         let size = Decimal { exponent: value.exponent.saturating_add(power), ..value }.to_f64();
         if size.is_infinite() {
@@ -222,8 +228,8 @@ pub fn unit(start: Cursor<'_>) -> Read<'_, Option<Unit>> {
     }
     let Some(first) = Unit::from_symbol(word) else {
         let span = start.span(word.len());
-        let suggestion = Unit::likely(word);
-        if word == "j" || FUNCTIONS.contains(&word) {
+        let suggestion = Unit::likely(word).or_else(|| misspelt(word));
+        if word == "j" || word == "f" || FUNCTIONS.contains(&word) {
             let hint = "write `*` to multiply";
             return Err(failure(unexpected(start, "a unit or an operator", hint)));
         }
@@ -241,6 +247,13 @@ pub fn unit(start: Cursor<'_>) -> Read<'_, Option<Unit>> {
         rest = after;
     }
     Ok((rest, Some(unit)))
+}
+
+/// A unit that an unknown word is a misspelling of; short words are more likely other units.
+fn misspelt(word: &str) -> Option<String> {
+    const LONG: [&str; 9] = ["ohm", "kohm", "Mohm", "kHz", "MHz", "GHz", "deg", "rad", "var"];
+    let found = (3..=12).contains(&word.len()).then(|| did_you_mean(&word.to_lowercase(), LONG));
+    found.flatten().map(str::to_owned)
 }
 
 /// `unit_factor`: `*` or `/` with a unit symbol glued to it; true for `/`.

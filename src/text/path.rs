@@ -6,6 +6,7 @@ use crate::text::error::TextError;
 use crate::text::expression::expression;
 use crate::text::lexis::{
     blank, element_name, expect, expect_or, name, shortened, sign, spaces, unexpected, word,
+    word_here,
 };
 use nom::Parser;
 use nom::branch::alt;
@@ -188,7 +189,15 @@ fn attribute(input: Cursor<'_>) -> Read<'_, Attribute> {
     let found = words.iter().find_map(|w| word(w).parse(start).ok().map(|(rest, _)| (*w, rest)));
     let Some((which, rest)) = found else {
         let comma = start.rest.starts_with(|c: char| c.is_ascii_digit());
-        let hint = if comma { "a decimal point is written `.`" } else { "" };
+        let hint = match words.into_iter().find(|w| strsim::osa_distance(word_here(start), w) == 1)
+        {
+            _ if comma => "a decimal point is written `.`",
+            Some("q") if start.rest.starts_with('Q') => "did you mean `q`?",
+            Some("esr") => "did you mean `esr`?",
+            Some("tand") => "did you mean `tand`?",
+            Some("tol") => "did you mean `tol`?",
+            _ => "",
+        };
         let what = "an attribute: `q`, `esr`, `tand` or `tol`";
         return Err(failure(unexpected(input, what, hint)));
     };

@@ -1,6 +1,6 @@
 //! The words of the language, and which of them cannot be names of values.
 
-use crate::quantity::Unit;
+use crate::quantity::{Dimension, Unit};
 
 /// The words that start a statement.
 pub const STATEMENTS: [&str; 10] =
@@ -32,7 +32,22 @@ pub fn reserved(word: &str) -> Option<String> {
         word if FUNCTIONS.contains(&word) => "is a function",
         word if READINGS.contains(&word) => "is a reading of the circuit",
         word if JOINTS.contains(&word) => "is a word of the language",
-        word => return Unit::spoken(word).map(|unit| format!("is a unit ({unit})")),
+        word if is_usual_unit(word) => {
+            return Unit::spoken(word).map(|unit| format!("is a unit ({unit})"));
+        }
+        _ => return None,
     };
     Some(fixed.to_owned())
+}
+
+/// True for units somebody writes. `Rs` could be a ronnasecond and `Gm` a gigametre; engineers
+/// mean a resistance and a transconductance, and no value was ever given in those units.
+pub(crate) fn is_usual_unit(word: &str) -> bool {
+    let Some(unit) = Unit::from_symbol(word) else { return false };
+    let largest = match unit.dimension {
+        Dimension::TIME => 0,
+        Dimension::LENGTH => 3,
+        _ => 12,
+    };
+    (-12..=largest).contains(&unit.power_of_ten)
 }

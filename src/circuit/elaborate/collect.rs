@@ -60,7 +60,10 @@ impl<'a> Elaborator<'a> {
     fn apply_overrides(&mut self) {
         for (name, value) in self.input.overrides {
             match self.scopes[0].lets.get(&*name.text) {
-                Some(&id) => self.lets[id].value = value,
+                Some(&id) => {
+                    let own = std::mem::replace(&mut self.lets[id].value, value);
+                    self.overridden.push((id, own));
+                }
                 None => {
                     let known = self.scopes[0].lets.keys().copied();
                     let near = did_you_mean(&name.text, known).map(str::to_owned);

@@ -154,3 +154,17 @@ pub(super) fn plain_number(tape: &Tape, id: FormulaId) -> Option<f64> {
         _ => leaf(id),
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use crate::circuit::elaborate::functions::FUNCTIONS;
+
+    #[test]
+    fn the_language_and_its_meaning_know_the_same_functions() {
+        let mut own: Vec<_> = FUNCTIONS.iter().map(|(name, ..)| *name).collect();
+        let mut known = crate::text::FUNCTIONS.to_vec();
+        own.sort_unstable();
+        known.sort_unstable();
+        assert_eq!(own, known);
+    }
+}

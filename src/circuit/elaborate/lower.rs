@@ -43,6 +43,23 @@ impl<'a> Elaborator<'a> {
         }
     }
 
+    /// Says so where a value from the command line measures something else than the circuit's own.
+    pub(super) fn overrides_fit(&mut self) -> bool {
+        let mut fit = true;
+        for (id, own) in std::mem::take(&mut self.overridden) {
+            let LetState::Done(given) = self.lets[id].state else { continue };
+            let Some(own) = self.lower(0, own) else { continue };
+            let (value, name) = (self.lets[id].value, self.lets[id].full_name.clone());
+            let (given, own) = (self.tape.get(given).dimension, self.tape.get(own).dimension);
+            if given != own {
+                fit = false;
+                let span = value.span;
+                self.errors.push(CircuitError::OverrideDimension { name, given, own, span });
+            }
+        }
+        fit
+    }
+
     fn report_cycle(&mut self, stack: &[LetId], needed: LetId) {
         let start = stack.iter().position(|&id| id == needed).unwrap_or(0);
         let around = &stack[start..];

@@ -101,6 +101,8 @@ struct Elaborator<'a> {
     stopped: bool,
     scopes: Vec<Scope<'a>>,
     lets: Vec<Let<'a>>,
+    /// `let`s given another value on the command line, with the value in the circuit.
+    overridden: Vec<(LetId, &'a ast::Expr)>,
     pending: Vec<(ScopeId, Pending<'a>)>,
     tape: Tape,
     tables: HashMap<SourceId, Option<TableId>>,
@@ -127,6 +129,10 @@ pub fn elaborate(input: &Input) -> Result<Circuit, Vec<CircuitError>> {
     let mut work = Elaborator::new(input);
     work.collect();
     work.lower_lets();
+    if !work.overrides_fit() {
+        // Everything that uses the value would be wrong too.
+        return Err(work.errors);
+    }
     work.lower_pending();
     work.finish()
 }
@@ -139,6 +145,7 @@ impl<'a> Elaborator<'a> {
             stopped: false,
             scopes: Vec::new(),
             lets: Vec::new(),
+            overridden: Vec::new(),
             pending: Vec::new(),
             tape: Tape::default(),
             tables: HashMap::new(),
