@@ -41,7 +41,7 @@ impl Algebra {
     /// The constant value of a formula.
     pub(crate) fn ball(&self, id: FormulaId) -> Option<Ball> {
         let constant = self.tape.get(id).phase == Phase::Constant;
-        if constant { self.values[id.index()].clone().ok() } else { None }
+        if constant { self.values[id.index()].ok() } else { None }
     }
 
     /// The constant real value of a formula.

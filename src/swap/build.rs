@@ -108,6 +108,8 @@ pub(crate) struct Build<'o> {
     /// Nodes that are one.
     wires: Trees,
     taken: HashSet<(Space, String)>,
+    /// Formulas that have a `let` name.
+    named: HashSet<FormulaId>,
     parts: Vec<Part>,
     /// The trees of the windings of this set before it was replaced.
     islands_before: Vec<u32>,
@@ -162,6 +164,7 @@ impl<'o> Build<'o> {
             trees,
             wires,
             taken,
+            named: original.lets.iter().map(|(_, id)| *id).collect(),
             parts: Vec::new(),
             islands_before: Vec::new(),
         };
@@ -229,7 +232,7 @@ impl<'o> Build<'o> {
         let isolation_lost = several && together;
         if isolation_lost {
             self.warnings.push(format!(
-                "{} are isolated from each other, this {} is not: it is a model, never build it \
+                "{} are isolated from each other, this {} is not; it is a model: never build it \
                  in place of an isolating transformer",
                 set.names(),
                 self.options.into
@@ -256,7 +259,7 @@ impl<'o> Build<'o> {
 
     /// Gives a value a `let` name, unless it has one.
     pub(crate) fn name_value(&mut self, base: &str, id: FormulaId) {
-        if !self.circuit.lets.iter().any(|(_, known)| *known == id) {
+        if self.named.insert(id) {
             let name = self.free(Space::Let, &base.replace('.', "_"));
             self.circuit.lets.push((name, id));
         }
@@ -339,8 +342,6 @@ impl<'o> Build<'o> {
     ) -> ElementId {
         let own = &self.circuit.ideals[ideal];
         let name = format!("{}.{}", own.name, own.windings.len() + 1);
-        let (_, list) = self.placed.last().expect("elements are added to a set");
-        let _ = list;
         let id = self.add(&name, dotted, plain, Law::IdealWinding { ideal, turns });
         self.circuit.ideals[ideal].windings.push(id);
         id

@@ -1,6 +1,7 @@
 //! What was done, in words and numbers.
 
 use crate::circuit::Circuit;
+use crate::circuit::print::Printer;
 use crate::number::{Ball, Balls, Field};
 use crate::quantity::{Decimal, Dimension};
 use crate::swap::algebra::Algebra;
@@ -91,6 +92,7 @@ pub(crate) fn purchase(value: Option<f64>, dimension: Dimension) -> Purchase {
 /// The lines that say what was replaced, under which condition and by which formulas.
 pub fn explain(circuit: &Circuit, twin: &Twin) -> Vec<String> {
     let mut lines = Vec::new();
+    let printer = Printer::new(&twin.circuit);
     for record in &twin.records {
         if !lines.is_empty() {
             lines.push(String::new());
@@ -98,7 +100,6 @@ pub fn explain(circuit: &Circuit, twin: &Twin) -> Vec<String> {
         lines.extend(explain_set(record));
         for name in &record.windings {
             let reading = twin.readings.iter().find(|reading| &reading.name == name);
-            let printer = crate::circuit::print::Printer::new(&twin.circuit);
             if let Some(reading) = reading {
                 let own = circuit.element(reading.winding).name.replace('.', "_");
                 let amps = printer.definition(reading.amps_formula);
@@ -112,7 +113,8 @@ pub fn explain(circuit: &Circuit, twin: &Twin) -> Vec<String> {
 
 /// The lines that say what was replaced, what allowed it, and by which formulas, in short.
 pub fn summary(record: &Swapped) -> Vec<String> {
-    let mut lines = vec![format!("{}, now a {}:", record.windings.join(", "), record.kind)];
+    let mut lines =
+        vec![format!("{}, now {}:", record.windings.join(", "), record.kind.in_words())];
     lines.push(format!("  {}", condition(&record.condition)));
     for leg in &record.legs {
         let what = match (leg.fate, &leg.purchase) {
@@ -129,7 +131,8 @@ pub fn summary(record: &Swapped) -> Vec<String> {
 }
 
 fn explain_set(record: &Swapped) -> Vec<String> {
-    let mut lines = vec![format!("{}, now a {}:", record.windings.join(", "), record.kind)];
+    let mut lines =
+        vec![format!("{}, now {}:", record.windings.join(", "), record.kind.in_words())];
     lines.push(format!("  {}", condition(&record.condition)));
     if record.isolation_lost {
         lines

@@ -12,6 +12,7 @@ use crate::quantity::{Decimal, Dimension};
 use crate::source::Span;
 use crate::swap::build::{Build, Done, Part};
 use crate::swap::{Fate, Leg, Purchase, Reading, SwapError, Swapped, Twin, explain, same_name};
+use std::collections::HashMap;
 
 /// Old numbers to new ones.
 struct Maps<'b, 'o> {
@@ -76,7 +77,7 @@ fn check_used(build: &Build) -> Result<(), SwapError> {
 
 fn merge_nodes(build: &Build) -> (Vec<Node>, Vec<NodeId>) {
     let mut nodes: Vec<Node> = Vec::new();
-    let mut new_of_key = std::collections::HashMap::new();
+    let mut new_of_key = HashMap::new();
     let mut map = Vec::new();
     for (i, node) in build.circuit.nodes.iter().enumerate() {
         let key = build.node_key(NodeId(i as u32));
@@ -95,14 +96,16 @@ fn merge_nodes(build: &Build) -> (Vec<Node>, Vec<NodeId>) {
 
 /// The elements in the order of the twin: new ones in the place of the first winding of their set.
 fn order_elements(build: &Build) -> (Vec<ElementId>, Vec<Option<ElementId>>) {
+    // No winding is in two sets.
+    let placed: HashMap<ElementId, &Vec<ElementId>> =
+        build.placed.iter().map(|(anchor, list)| (*anchor, list)).collect();
     let mut order = Vec::new();
     for i in 0..build.original_elements {
         let id = ElementId(i as u32);
         if !build.replaced.contains(&id) {
             order.push(id);
         }
-        let own = build.placed.iter().filter(|(anchor, _)| *anchor == id);
-        own.for_each(|(_, list)| order.extend(list));
+        order.extend(placed.get(&id).into_iter().flat_map(|list| list.iter().copied()));
     }
     let mut map = vec![None; build.circuit.elements.len()];
     for (new, old) in order.iter().enumerate() {

@@ -153,6 +153,9 @@ fn factor(build: &mut Build, set: &CoupledSet) -> Result<Vec<Step>, SwapError> {
     while let Some(place) = left.iter().position(|&i| a[i * n + i].is_some()) {
         let p = left.remove(place);
         let Some(pivot) = a[p * n + p] else { break };
+        if n > 2 && !steps.is_empty() {
+            build.name_value(&format!("left_{}", set.windings[p].name), pivot);
+        }
         let mut turns = vec![None; n];
         for &i in &left {
             let Some(entry) = a[i * n + p] else { continue };

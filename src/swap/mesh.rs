@@ -4,7 +4,8 @@
 //! those of the terminals, A the signed incidence of the windings on the terminals. So the currents
 //! into the terminals are B/s times their voltages, B = A·Γ·Aᵀ, whose rows add up to zero: exactly
 //! what legs −1/B_pq between every two terminals do. Where B_pq is zero there is no leg. Windings
-//! may share terminals or not; two free ones have six legs, two of them negative.
+//! may share terminals or not; two free ones have six legs, two of them negative (fewer where the
+//! tie makes two of their terminals one).
 //!
 //! Holds where L has an inverse (k < 1). The legs between two islands carry no net current (every
 //! winding's current returns on its own side), so one tie fixes their potentials and changes
@@ -21,8 +22,16 @@ use std::collections::HashMap;
 
 pub(crate) fn build(build: &mut Build, set: &CoupledSet) -> Result<Condition, SwapError> {
     let inverse = invert(build, set)?;
-    let terminals = terminals(build, set);
+    // Islands that legs will be laid between are joined first: terminals that become one need no
+    // legs between them.
     let mut ties = Vec::new();
+    for i in 0..set.len() {
+        for j in (i + 1..set.len()).filter(|&j| inverse.entries[i * set.len() + j].is_some()) {
+            let nodes = [i, j].map(|i| set.windings[i].plain());
+            ties.extend(tie::join_islands(build, &nodes));
+        }
+    }
+    let terminals = terminals(build, set);
     // The current out of each terminal into the mesh.
     let mut into: Vec<Vec<(bool, ElementId)>> = vec![Vec::new(); terminals.nodes.len()];
     for p in 0..terminals.nodes.len() {
@@ -32,7 +41,6 @@ pub(crate) fn build(build: &mut Build, set: &CoupledSet) -> Result<Condition, Sw
             };
             let value = build.algebra.quotient(inverse.numerator, divisor);
             let ends = (terminals.nodes[p], terminals.nodes[q]);
-            ties.extend(tie::join_islands(build, &[ends.0, ends.1]));
             let [a, b] = [ends.0, ends.1].map(|node| build.node_name(node).replace('.', "_"));
             let laid = build.leg(&format!("mesh_{a}_{b}"), ends, (Some(value), None), Role::Shunt);
             if let Laid::Element(id) = laid {
@@ -151,8 +159,8 @@ fn invert(build: &mut Build, set: &CoupledSet) -> Result<Inverse, SwapError> {
         SwapError::FullyCoupled { kind: Kind::Mesh, names, span }
     };
     let n = set.len();
-    let algebra = &mut build.algebra;
     if n == 2 {
+        let algebra = &mut build.algebra;
         let numerator = set.determinant(algebra).ok_or_else(refused)?;
         let minus = set.inductance(0, 1).map(|m| algebra.negative(m));
         let [a, b] = [0, 1].map(|i| Some(set.windings[i].inductance));
@@ -161,34 +169,42 @@ fn invert(build: &mut Build, set: &CoupledSet) -> Result<Inverse, SwapError> {
         return Ok(Inverse { n, entries: vec![b, minus, minus, a], numerator });
     }
     // Sweeping every row of a symmetric matrix leaves its negative inverse, and the matrix stays
-    // symmetric on the way (the sweep operator; Beaton 1964, from memory).
+    // symmetric on the way (the sweep operator; Beaton 1964, from memory). Here the diagonal of
+    // swept rows has its sign turned, so that what people see is positive.
     let mut a: Vec<Maybe> = (0..n * n).map(|at| set.inductance(at / n, at % n)).collect();
-    let one = algebra.one();
+    let one = build.algebra.one();
     for k in 0..n {
         let pivot = a[k * n + k].ok_or_else(refused)?;
+        if k > 0 {
+            build.name_value(&format!("left_{}", set.windings[k].name), pivot);
+        }
+        let algebra = &mut build.algebra;
         let ratio: Vec<Maybe> =
             (0..n).map(|i| a[i * n + k].map(|entry| algebra.quotient(entry, pivot))).collect();
         for i in (0..n).filter(|&i| i != k) {
             for j in (i..n).filter(|&j| j != k) {
                 let (Some(factor), Some(entry)) = (ratio[i], a[k * n + j]) else { continue };
                 let part = algebra.product(factor, entry);
-                let left = algebra.difference(a[i * n + j], Some(part));
+                let left = match i == j && i < k {
+                    true => algebra.sum(a[i * n + j], Some(part)),
+                    false => algebra.difference(a[i * n + j], Some(part)),
+                };
                 (a[i * n + j], a[j * n + i]) = (left, left);
             }
         }
         for i in (0..n).filter(|&i| i != k) {
             (a[i * n + k], a[k * n + i]) = (ratio[i], ratio[i]);
         }
-        let inverse = algebra.quotient(one, pivot);
-        a[k * n + k] = Some(algebra.negative(inverse));
+        a[k * n + k] = Some(algebra.quotient(one, pivot));
     }
     let mut entries = vec![None; n * n];
     for i in 0..n {
         for j in i..n {
             let Some(swept) = a[i * n + j] else { continue };
-            let entry = build.algebra.negative(swept);
-            let joint = joint(&set.windings[i].name, &set.windings[j].name);
-            build.name_value(&format!("G_{joint}"), entry);
+            let [first, second] = [i, j].map(|i| set.windings[i].name.as_str());
+            let name = if i == j { first.to_owned() } else { joint(first, second) };
+            build.name_value(&format!("G_{name}"), swept);
+            let entry = build.algebra.signed(i != j, swept);
             (entries[i * n + j], entries[j * n + i]) = (Some(entry), Some(entry));
         }
     }

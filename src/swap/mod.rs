@@ -61,6 +61,17 @@ impl Kind {
             Kind::Dependent => "dependent",
         }
     }
+
+    /// What a set becomes, for a sentence.
+    pub fn in_words(self) -> &'static str {
+        match self {
+            Kind::Tee => "a tee",
+            Kind::Pi => "a pi",
+            Kind::Mesh => "a mesh",
+            Kind::Leakage => "inductances and ideal transformers",
+            Kind::Dependent => "uncoupled windings with dependent sources",
+        }
+    }
 }
 
 impl fmt::Display for Kind {

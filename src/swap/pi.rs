@@ -32,7 +32,7 @@ pub(crate) fn build(build: &mut Build, set: &CoupledSet) -> Result<Condition, Sw
     };
     build.name_value(&format!("D_{}", pair.joint), determinant);
     let mut into = [Some(Vec::new()), Some(Vec::new())];
-    for i in 0..2 {
+    for (i, terms) in into.iter_mut().flatten().enumerate() {
         let divisor = build.algebra.difference(Some(pair.own[1 - i]), pair.mutual);
         let name = format!("{}_shunt", set.windings[i].name);
         let Some(value) = over(build, determinant, divisor) else {
@@ -41,7 +41,7 @@ pub(crate) fn build(build: &mut Build, set: &CoupledSet) -> Result<Condition, Sw
         };
         let ends = pair.inward(i, pair.common);
         let laid = build.leg(&name, ends, (Some(value), None), Role::Shunt);
-        if let (Laid::Element(id), Some(terms)) = (laid, &mut into[i]) {
+        if let Laid::Element(id) = laid {
             terms.push((!pair.ports[i].forward, id));
         }
     }

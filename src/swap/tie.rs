@@ -83,27 +83,20 @@ fn best_ends(build: &Build, set: &CoupledSet) -> [End; 2] {
     if references(dotted) > references(plain) { dotted } else { plain }
 }
 
-/// Joins the trees of nodes that legs were laid between: at the nodes asked for, else at their
-/// references, so that what was measured against a reference stays the same.
-pub(crate) fn join_islands(build: &mut Build, nodes: &[NodeId]) -> Vec<(String, String)> {
-    let mut ties = Vec::new();
-    for pair in nodes.windows(2) {
-        if build.same_tree(pair[0], pair[1]) {
-            continue;
-        }
-        let between = |build: &Build, a, b| {
-            let [p, q] = [pair[0], pair[1]];
-            (build.same_tree(a, p) && build.same_tree(b, q))
-                || (build.same_tree(a, q) && build.same_tree(b, p))
-        };
-        let mut chosen = [0, 1].map(|i| build.reference[pair[i].index()]);
-        if let Some((a, b)) = build.tie_nodes
-            && between(build, a, b)
-        {
+/// Joins the trees of two nodes that legs will be laid between: at the nodes asked for, else at
+/// their references, so that what was measured against a reference stays the same.
+pub(crate) fn join_islands(build: &mut Build, nodes: &[NodeId; 2]) -> Option<(String, String)> {
+    let [p, q] = *nodes;
+    if build.same_tree(p, q) {
+        return None;
+    }
+    let mut chosen = nodes.map(|node| build.reference[node.index()]);
+    if let Some((a, b)) = build.tie_nodes {
+        let between = |a, b| build.same_tree(a, p) && build.same_tree(b, q);
+        if between(a, b) || between(b, a) {
             build.tie_used = true;
             chosen = [a, b];
         }
-        ties.push(build.tie(chosen));
     }
-    ties
+    Some(build.tie(chosen))
 }
