@@ -112,6 +112,7 @@ fn sweep_one(
         frequency_hz: 0.0,
         values: vec![undetermined; circuit.reads.len()],
         missed: vec![false; circuit.reads.len()],
+        highest_volts: 0.0,
     };
     for &frequency_hz in &plan.frequencies_hz {
         let regime = regime_of(frequency_hz);
@@ -122,6 +123,7 @@ fn sweep_one(
         };
         engine.solve(frequency_hz)?;
         row.frequency_hz = frequency_hz;
+        row.highest_volts = engine.highest_volts();
         for (i, read) in circuit.reads.iter().enumerate() {
             let value = engine.value(read.value).map_or(undetermined, Value::from);
             row.values[i] = value;

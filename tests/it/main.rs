@@ -1,15 +1,19 @@
 //! The integration tests, one binary so that they link once.
 //!
 //! - `bad`: every faulty circuit is refused in the words kept beside it
+//! - `cli`: the program as it is called
 //! - `exact`: circuits drawn at random, solved in exact arithmetic by another formulation
 //! - `examples`: circuits of the scenario and of the docs
+//! - `mutated`: circuits with random faults never make anything panic
 //! - `reference`: published values from outside the project
 //! - `tidy`: rules of the house
 //! - `support`: solve a circuit text and read values by name
 
 mod bad;
+mod cli;
 mod exact;
 mod examples;
+mod mutated;
 mod reference;
 mod support;
 mod tidy;
