@@ -356,16 +356,19 @@ mod tests {
                   ─────────────────────────────
                   bus    33.9411 V  -j12.7279 V
 
+                Ends
+                  element   left → right
+                  ──────────────────────
+                  drive     gnd → in
+                  load      bus → keel
+                  shield    bus → gnd
+
                 Across and through (drop = left minus right, current left to right)
-                  elemen   left →   drop                               current
-                  t        right
-                  ──────────────────────────────────────────────────────────────────────────────
-                  drive    gnd →             -67.8823 V   +j0      V   1.76777 A  -j530.330   mA
-                           in
-                  load     bus →              33.9411 V  -j12.7279 V   2.82843 A    -j1.06066  A
-                           keel
-                  shield   bus →    undetermined                       0       A    +j0        A
-                           gnd
+                  element   drop                               current
+                  ──────────────────────────────────────────────────────────────────────
+                  drive              -67.8823 V   +j0      V   1.76777 A  -j530.330   mA
+                  load                33.9411 V  -j12.7279 V   2.82843 A    -j1.06066  A
+                  shield    undetermined                       0       A    +j0        A
 
                 Power taken up
                   element   what it is       real         reactive

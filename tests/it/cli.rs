@@ -326,7 +326,9 @@ fn a_check_in_json_lists_errors_and_remarks() {
     let errors = bad["errors"].as_array().expect("a list");
     assert!(errors.len() >= 2, "{bad}");
     errors.iter().for_each(|e| has_exactly(e, &["message", "file", "line", "column", "help"]));
-    assert_eq!((&errors[0]["line"], &errors[1]["line"]), (&1.into(), &2.into()));
+    for line in [1, 2] {
+        assert!(errors.iter().any(|error| error["line"] == line), "{bad}");
+    }
     assert_eq!(bad["counts"], Value::Null);
 }
 
@@ -381,7 +383,7 @@ fn tables_have_the_digits_asked_for_and_none_that_may_be_wrong() {
         let line = table.lines().find(|line| line.trim().starts_with("third")).expect("a line");
         line.split_whitespace().nth(1).expect("a number").to_owned()
     };
-    assert_eq!(shown("2"), "330");
+    assert_eq!(shown("2"), "0.33");
     assert_eq!(shown("3"), "333");
     assert_eq!(shown("6"), "333.333");
     // A double holds no seventeen digits of a third.
@@ -455,9 +457,11 @@ fn direct_current_opens_capacitors_and_shorts_windings() {
 #[test]
 fn a_circuit_above_extra_low_voltage_gets_one_line_beside_its_output() {
     let at = |volts: &str, frequency: &str, command: &str| {
+        let format = if command == "solve" { "json" } else { "csv" };
         let circuit = format!("gnd -( u: {volts} V +)- a -( r: 1 kΩ )- gnd\nread a = volts(a)\n");
         let ran = piped(circuit.as_bytes(), &[command, "-", "--at", frequency]);
-        assert_eq!(ran.code, Some(0), "{}", ran.err);
+        let data = piped(circuit.as_bytes(), &[command, "-", "--at", frequency, "--as", format]);
+        assert_eq!((ran.code, data.code, &data.err), (Some(0), Some(0), &ran.err));
         assert!(!ran.out.contains("60364"), "{}", ran.out);
         ran.err
     };
