@@ -1,10 +1,12 @@
 //! How a command ends: diagnostics and notes on standard error, and the exit code.
 
 use crate::diag::Diagnostic;
+use crate::render::columns::TERMINAL_COLUMNS;
 use crate::source::Sources;
 use crate::study::StudyError;
 use std::io::{self, IsTerminal, Write};
 use std::process::ExitCode;
+use unicode_width::UnicodeWidthStr;
 
 /// Diagnostics drawn in one run. Nobody reads more before mending something.
 const MOST_SHOWN: usize = 40;
@@ -99,9 +101,31 @@ pub fn diagnostics(found: &[Diagnostic], sources: &Sources) {
     }
 }
 
-/// One line for the reader beside the output.
+/// One line for the reader beside the output; several at a terminal, which would break words.
 pub fn note(text: &str) {
-    say(&format!("note: {text}"));
+    let line = format!("note: {text}");
+    match io::stderr().is_terminal() {
+        true => say(&wrapped(&line)),
+        false => say(&line),
+    }
+}
+
+/// A text in lines of a plain terminal, all but the first indented.
+fn wrapped(text: &str) -> String {
+    let (mut out, mut used) = (String::new(), 0);
+    for word in text.split(' ') {
+        if used > 0 && used + 1 + word.width() > TERMINAL_COLUMNS {
+            out.push_str("\n     ");
+            used = 5;
+        }
+        if used > 0 {
+            out.push(' ');
+            used += 1;
+        }
+        out.push_str(word);
+        used += word.width();
+    }
+    out
 }
 
 /// A limit that was missed.
@@ -112,4 +136,19 @@ pub fn missed(text: &str) {
 fn say(text: &str) {
     // Nowhere is left to complain if standard error is closed.
     let _ = writeln!(io::stderr().lock(), "{text}");
+}
+
+#[cfg(test)]
+mod tests {
+    use crate::cli::report::wrapped;
+
+    #[test]
+    fn a_long_note_breaks_between_words_and_loses_none() {
+        let text = format!("note: {}", "local electrical codes ".repeat(9)) + "decide";
+        let lines = wrapped(&text);
+        assert!(lines.lines().count() > 2 && lines.lines().all(|line| line.len() <= 80), "{lines}");
+        let words = |text: &str| text.split_whitespace().map(str::to_owned).collect::<Vec<_>>();
+        assert_eq!(words(&lines), words(&text));
+        assert_eq!(wrapped("note: short"), "note: short");
+    }
 }

@@ -60,9 +60,8 @@ fn remark(solution: &Solution, format: Format, peak: bool) -> Ending {
     if format == Format::Csv && peak {
         report::note("volts and amperes are amplitudes (peak); powers are means");
     }
-    if format != Format::Json {
-        solution.notes.iter().for_each(|text| report::note(text));
-    }
+    // JSON has the notes too, but who reads it with a program may not show them to anybody.
+    solution.notes.iter().for_each(|text| report::note(text));
     let missed = solution.readings.iter().filter(|reading| !reading.missed.is_empty());
     let mut ending = Ending::Done;
     for reading in missed {

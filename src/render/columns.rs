@@ -4,9 +4,10 @@ use crate::render::number::{Bounded, Scale, Text, UNKNOWN, Widths, angle, engine
 use crate::render::{Form, Style};
 use crate::study::Value;
 use comfy_table::{ColumnConstraint, ContentArrangement, LineStyle, TableStyle};
+use unicode_width::UnicodeWidthStr;
 
 /// Columns of a plain terminal.
-const TERMINAL_COLUMNS: u16 = 80;
+pub const TERMINAL_COLUMNS: usize = 80;
 /// Blanks before every line of a table.
 const INDENT: &str = "  ";
 /// A thin rule below the headings and nothing else.
@@ -56,7 +57,11 @@ fn align(column: &[[Text; 2]]) -> Vec<String> {
     column.iter().map(line).collect()
 }
 
+/// Blanks between two columns: the last of them stands for the line that is not drawn.
+const GAP: usize = 3;
+
 /// One column: its heading, its cells, and whether they are numbers, which are never wrapped.
+#[derive(Clone)]
 pub struct Column {
     heading: &'static str,
     cells: Vec<String>,
@@ -74,12 +79,44 @@ pub fn numbers(heading: &'static str, cells: impl IntoIterator<Item = [Text; 2]>
     Column { heading, cells: align(&cells), numbers: true }
 }
 
-/// Draws columns side by side.
+impl Column {
+    fn width(&self) -> usize {
+        self.cells.iter().map(|cell| cell.width()).chain([self.heading.width()]).max().unwrap_or(0)
+    }
+}
+
+/// True where columns stand side by side without wrapping any.
+pub fn fits(columns: &[Column]) -> bool {
+    let widths: usize = columns.iter().map(Column::width).sum();
+    INDENT.len() + widths + GAP * columns.len().saturating_sub(1) <= TERMINAL_COLUMNS
+}
+
+/// Draws columns below each other, as many side by side as fit, with the first one in front of
+/// each lot.
+pub fn draw_in_lots(mut columns: Vec<Column>, text: &mut String) {
+    if columns.is_empty() {
+        return;
+    }
+    let first = columns.remove(0);
+    let mut lot = vec![first.clone()];
+    for column in columns {
+        lot.push(column);
+        if lot.len() > 2 && !fits(&lot) {
+            let next = lot.pop();
+            draw(std::mem::replace(&mut lot, vec![first.clone()]), text);
+            lot.extend(next);
+        }
+    }
+    draw(lot, text);
+}
+
+/// Draws columns side by side; words wrap where there is no room.
 pub fn draw(columns: Vec<Column>, text: &mut String) {
     let mut table = comfy_table::Table::new();
     table.load_style(RULE).set_content_arrangement(ContentArrangement::Dynamic);
-    table.set_width(TERMINAL_COLUMNS - INDENT.len() as u16);
+    table.set_width((TERMINAL_COLUMNS - INDENT.len()) as u16);
     table.set_header(columns.iter().map(|c| c.heading).collect::<Vec<_>>());
+    let whole = fits(&columns);
     let rows = columns.first().map_or(0, |c| c.cells.len());
     for i in 0..rows {
         table.add_row(columns.iter().map(|c| c.cells[i].as_str()).collect::<Vec<_>>());
@@ -87,8 +124,8 @@ pub fn draw(columns: Vec<Column>, text: &mut String) {
     for (i, column) in columns.iter().enumerate() {
         let last = i + 1 == columns.len();
         if let Some(drawn) = table.column_mut(i) {
-            drawn.set_padding((0, if last { 0 } else { 2 }));
-            if column.numbers {
+            drawn.set_padding((0, if last { 0 } else { GAP as u16 - 1 }));
+            if column.numbers || whole {
                 drawn.set_constraint(ColumnConstraint::ContentWidth);
             }
         }

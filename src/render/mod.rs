@@ -223,6 +223,7 @@ pub mod samples {
             frequency_hz,
             values: vec![out, value(0.0, -50.0, 1e-12), value(0.5, 0.0, 0.0)],
             missed: vec![false, false, frequency_hz > 1e4],
+            highest_volts: 50.0,
         };
         let rows = vec![row(1e4, value(3.0, 4.0, 1e-15)), row(12345.5, value(-1e-3, 0.0, 1e-7))];
         (head, rows)

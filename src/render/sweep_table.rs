@@ -1,7 +1,8 @@
-//! A sweep as a table whose rows are written as they come, in columns of fixed width.
+//! A sweep as a table whose rows are written as they come, in columns of fixed width. Columns
+//! that a terminal has no room for go on in further lines of the same row.
 
 use crate::quantity::Dimension;
-use crate::render::columns::phasor;
+use crate::render::columns::{TERMINAL_COLUMNS, phasor};
 use crate::render::number::{Widths, exact};
 use crate::render::{Form, Style, unit_of};
 use crate::study::{SweepHead, SweepRow};
@@ -91,12 +92,37 @@ impl SweepTable {
         }
         self.varied = head.varied.iter().map(|(_, dimension)| *dimension).collect();
         self.readings = head.readings.clone();
-        let names = self.columns.iter().map(|c| pad(&c.name, c.width)).collect::<Vec<_>>();
+        let names = self.columns.iter().map(|c| c.name.clone()).collect::<Vec<_>>();
         let rules = self.columns.iter().map(|c| "─".repeat(c.width)).collect::<Vec<_>>();
-        for cells in [names, rules] {
-            out.extend_from_slice(cells.join(GAP).trim_end().as_bytes());
-            out.push(b'\n');
+        let names = self.fold(&names, &[]);
+        out.extend_from_slice(names.as_bytes());
+        // One line of rules serves a folded heading too: that of the first line.
+        let rules = self.fold(&rules, &[]);
+        out.extend_from_slice(rules.lines().next().unwrap_or_default().as_bytes());
+        out.push(b'\n');
+    }
+
+    /// The lines of one row: what does not fit goes on below the first reading.
+    fn fold(&self, cells: &[String], tail: &[String]) -> String {
+        let known = 1 + self.varied.len();
+        let start = self.columns.iter().take(known).map(|c| c.width + GAP.len()).sum::<usize>();
+        let (mut lines, mut line, mut used) = (String::new(), String::new(), 0);
+        let mut put = |text: &str, width: usize, is_known: bool| {
+            if !is_known && used > start && used + width > TERMINAL_COLUMNS {
+                lines.push_str(line.trim_end());
+                lines.push('\n');
+                line = " ".repeat(start);
+                used = start;
+            }
+            line.push_str(&pad(text, width));
+            line.push_str(GAP);
+            used += width + GAP.len();
+        };
+        for (i, (column, cell)) in self.columns.iter().zip(cells).enumerate() {
+            put(cell, column.width, i < known);
         }
+        tail.iter().for_each(|text| put(text, text.width(), false));
+        lines + line.trim_end() + "\n"
     }
 
     /// Appends one row, with the limits it missed at its end.
@@ -111,11 +137,8 @@ impl SweepTable {
             let shown = self.style.shown(*value, *dimension, row.frequency_hz);
             cells.push(phasor(shown, &unit_of(*dimension, *real), *real, self.style, None));
         }
-        let mut line = String::new();
-        for (column, text) in self.columns.iter().zip(&known) {
-            line.push_str(&pad(&text.glued(column.first), column.width));
-            line.push_str(GAP);
-        }
+        let glued = self.columns.iter().zip(&known).map(|(column, text)| text.glued(column.first));
+        let mut texts: Vec<_> = glued.collect();
         for (column, [first, second]) in self.columns[known.len()..].iter().zip(&cells) {
             let cell = match column.second == Widths::default() {
                 true => first.padded(column.first),
@@ -123,16 +146,17 @@ impl SweepTable {
                     format!("{}{GAP}{}", first.padded(column.first), second.padded(column.second))
                 }
             };
-            line.push_str(&pad(&cell, column.width));
-            line.push_str(GAP);
+            texts.push(cell);
         }
         let missed = self.readings.iter().zip(&row.missed).filter(|(_, missed)| **missed);
         let missed: Vec<_> = missed.map(|((name, _, _), _)| name.as_str()).collect();
-        if !missed.is_empty() {
-            line.push_str(&format!("MISSED: {}", missed.join(", ")));
-        }
-        out.extend_from_slice(line.trim_end().as_bytes());
-        out.push(b'\n');
+        let tail = missed.iter().enumerate().map(|(i, name)| {
+            let word = if i == 0 { "MISSED: " } else { "" };
+            let comma = if i + 1 < missed.len() { "," } else { "" };
+            format!("{word}{name}{comma}")
+        });
+        let tail: Vec<_> = tail.collect();
+        out.extend_from_slice(self.fold(&texts, &tail).as_bytes());
     }
 }
 
@@ -161,28 +185,41 @@ mod tests {
         swept_as(
             Form::Polar,
             expect![[r#"
-                frequency         L_dock            out                     max(a, b)               efficiency
-                ────────────────  ────────────────  ──────────────────────  ──────────────────────  ──────────────
-                 10 kHz            240 µH             5.00000  V    53.13°   50.0000   Ω   -90.00°     0.500000
-                 12.3455 kHz       240 µH             1.000   mV   180.0°    50.0000   Ω   -90.00°     0.500000     MISSED: efficiency
+                frequency         L_dock            out
+                                                    max(a, b)               efficiency
+                ────────────────  ────────────────  ──────────────────────
+                 10 kHz            240 µH             5.00000  V    53.13°
+                                                     50.0000   Ω   -90.00°     0.500000
+                 12.3455 kHz       240 µH             1.000   mV   180.0°
+                                                     50.0000   Ω   -90.00°     0.500000
+                                                    MISSED: efficiency
             "#]],
         );
         swept_as(
             Form::Rect,
             expect![[r#"
-                frequency         L_dock            out                            max(a, b)                      efficiency
-                ────────────────  ────────────────  ─────────────────────────────  ─────────────────────────────  ──────────────
-                 10 kHz            240 µH              3.00000  V    +j4.00000  V     0        Ω   -j50.0000   Ω     0.500000
-                 12.3455 kHz       240 µH             -1.000   mV    +j0        V     0        Ω   -j50.0000   Ω     0.500000     MISSED: efficiency
+                frequency         L_dock            out
+                                                    max(a, b)
+                                                    efficiency
+                ────────────────  ────────────────  ─────────────────────────────
+                 10 kHz            240 µH              3.00000  V    +j4.00000  V
+                                                       0        Ω   -j50.0000   Ω
+                                                       0.500000
+                 12.3455 kHz       240 µH             -1.000   mV    +j0        V
+                                                       0        Ω   -j50.0000   Ω
+                                                       0.500000     MISSED: efficiency
             "#]],
         );
         swept_as(
             Form::Decibel,
             expect![[r#"
-                frequency         L_dock            out                    max(a, b)              efficiency
-                ────────────────  ────────────────  ─────────────────────  ─────────────────────  ──────────
-                 10 kHz            240 µH             13.98 dBV    53.13°    33.98 dBΩ   -90.00°    -6.02 dB
-                 12.3455 kHz       240 µH            -60.00 dBV   180.0°     33.98 dBΩ   -90.00°    -6.02 dB  MISSED: efficiency
+                frequency         L_dock            out                    max(a, b)
+                                                    efficiency
+                ────────────────  ────────────────  ─────────────────────  ─────────────────────
+                 10 kHz            240 µH             13.98 dBV    53.13°    33.98 dBΩ   -90.00°
+                                                      -6.02 dB
+                 12.3455 kHz       240 µH            -60.00 dBV   180.0°     33.98 dBΩ   -90.00°
+                                                      -6.02 dB  MISSED: efficiency
             "#]],
         );
     }

@@ -2,7 +2,7 @@
 
 use crate::quantity::Dimension;
 use crate::render::check::CheckPage;
-use crate::render::columns::{draw, numbers, phasor, words};
+use crate::render::columns::{draw, draw_in_lots, fits, numbers, phasor, words};
 use crate::render::compare::{self, ComparePage};
 use crate::render::number::{Bounded, Scale, Text, engineering, exact};
 use crate::render::sweep_table::SweepTable;
@@ -112,19 +112,25 @@ impl Page<'_> {
         if elements.is_empty() {
             return;
         }
-        self.text.push_str("Across and through (drop = left minus right, current left to right)\n");
         let drops = elements.iter().map(|e| match e.drop {
             Some(drop) => self.shown(drop, Dimension::VOLTAGE, false),
             None => [Text { whole: "undetermined".into(), ..Text::default() }, Text::default()],
         });
         let currents = elements.iter().map(|e| self.shown(e.current, Dimension::CURRENT, false));
-        let columns = vec![
-            words("element", elements.iter().map(|e| e.name.clone())),
-            words("left → right", elements.iter().map(|e| format!("{} → {}", e.left, e.right))),
-            numbers("drop", drops),
-            numbers("current", currents),
-        ];
-        draw(columns, &mut self.text);
+        let names = words("element", elements.iter().map(|e| e.name.clone()));
+        let ends = elements.iter().map(|e| format!("{} → {}", e.left, e.right));
+        let ends = words("left → right", ends);
+        let (drops, currents) = (numbers("drop", drops), numbers("current", currents));
+        let all = vec![names.clone(), ends.clone(), drops.clone(), currents.clone()];
+        let heading = "Across and through (drop = left minus right, current left to right)\n";
+        if fits(&all) {
+            self.text.push_str(heading);
+            return draw(all, &mut self.text);
+        }
+        self.text.push_str("Ends\n");
+        draw(vec![names.clone(), ends], &mut self.text);
+        self.text.push_str(heading);
+        draw_in_lots(vec![names, drops, currents], &mut self.text);
     }
 
     fn powers(&mut self) {
@@ -148,16 +154,26 @@ impl Page<'_> {
         let sum_real = sums.iter().map(|(_, s)| part(s.re, error, "W"));
         let sum_reactive = sums.iter().map(|(_, s)| part(s.im, error, "var"));
         let names = elements.iter().map(|e| (e.name.clone(), e.kind.to_owned()));
-        let (mut names, mut kinds): (Vec<_>, Vec<_>) = names.unzip();
-        names.extend([String::new(), String::new()]);
-        kinds.extend(sums.iter().map(|(name, _)| (*name).to_owned()));
-        let columns = vec![
-            words("element", names),
-            words("what it is", kinds),
+        let (names, kinds): (Vec<_>, Vec<_>) = names.unzip();
+        let (real, reactive) = (
             numbers("real", real.chain(sum_real)),
             numbers("reactive", reactive.chain(sum_reactive)),
-        ];
-        draw(columns, &mut self.text);
+        );
+        let labels = sums.map(|(label, _)| label.to_owned());
+        let blanks = || [String::new(), String::new()];
+        let columns = |names: &[String], kinds: &[String], label_first: bool| {
+            let (a, b) =
+                if label_first { (labels.clone(), blanks()) } else { (blanks(), labels.clone()) };
+            let names = words("element", names.iter().cloned().chain(a));
+            let kinds = words("what it is", kinds.iter().cloned().chain(b));
+            vec![names, kinds, real.clone(), reactive.clone()]
+        };
+        let all = columns(&names, &kinds, false);
+        match fits(&all) {
+            true => draw(all, &mut self.text),
+            // Every lot has the first column, so the labels of the sums stand there.
+            false => draw_in_lots(columns(&names, &kinds, true), &mut self.text),
+        }
     }
 
     fn readings(&mut self) {
@@ -182,9 +198,7 @@ impl Page<'_> {
     }
 
     fn footer(&mut self) {
-        let mismatch = self.solution.balance.mismatch;
-        let mut lines =
-            vec![format!("Power balance   closes to {mismatch:.1e} of all powers added up")];
+        let mut lines = vec![format!("Power balance   {}", closes(self.solution.balance.mismatch))];
         let highest = self.solution.highest_drop.and_then(|i| self.solution.elements.get(i));
         if let Some((element, drop)) = highest.and_then(|e| Some((e, e.drop?))) {
             let shown = self.style.shown(drop, Dimension::VOLTAGE, self.solution.frequency_hz);
@@ -203,6 +217,14 @@ impl Page<'_> {
             self.text.push_str(&line);
             self.text.push('\n');
         }
+    }
+}
+
+/// How well the power balance closes, in words.
+fn closes(mismatch: f64) -> String {
+    match mismatch == 0.0 {
+        true => "closes to the last bit".to_owned(),
+        false => format!("closes to {mismatch:.1e} of all powers added up"),
     }
 }
 
@@ -339,16 +361,19 @@ mod tests {
                   ─────────────────────────────
                   bus    33.9411 V  -j12.7279 V
 
+                Ends
+                  element   left → right
+                  ──────────────────────
+                  drive     gnd → in
+                  load      bus → keel
+                  shield    bus → gnd
+
                 Across and through (drop = left minus right, current left to right)
-                  elemen   left →   drop                               current
-                  t        right
-                  ──────────────────────────────────────────────────────────────────────────────
-                  drive    gnd →             -67.8823 V   +j0      V   1.76777 A  -j530.330   mA
-                           in
-                  load     bus →              33.9411 V  -j12.7279 V   2.82843 A    -j1.06066  A
-                           keel
-                  shield   bus →    undetermined                       0       A    +j0        A
-                           gnd
+                  element   drop                               current
+                  ──────────────────────────────────────────────────────────────────────
+                  drive              -67.8823 V   +j0      V   1.76777 A  -j530.330   mA
+                  load                33.9411 V  -j12.7279 V   2.82843 A    -j1.06066  A
+                  shield    undetermined                       0       A    +j0        A
 
                 Power taken up
                   element   what it is       real         reactive

@@ -220,6 +220,22 @@ impl<'c> Engine<'c> {
         Ball { centre: self.solution[at], radius: self.error[at] }
     }
 
+    /// The highest voltage anywhere: of a node against its reference, or across an element.
+    pub fn highest_volts(&self) -> f64 {
+        let node = |id: NodeId| match self.system.of_node[id.index()] {
+            Some(unknown) => self.solution[unknown as usize].to_complex(),
+            None => Complex64::ZERO,
+        };
+        let nodes = (0..self.circuit.nodes.len()).map(|i| node(NodeId(i as u32)).norm());
+        let tied = self
+            .circuit
+            .elements
+            .iter()
+            .filter(|element| self.system.islands.same(element.left, element.right));
+        let drops = tied.map(|element| (node(element.left) - node(element.right)).norm());
+        nodes.chain(drops).fold(0.0, f64::max)
+    }
+
     /// Left minus right of an element; `None` where nothing ties its ends.
     pub fn drop(&self, id: ElementId) -> Option<Ball> {
         let element = self.circuit.element(id);

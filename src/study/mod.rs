@@ -113,6 +113,8 @@ pub struct SweepRow {
     pub values: Vec<Value>,
     /// Which readings missed a limit.
     pub missed: Vec<bool>,
+    /// The highest voltage anywhere in the circuit, in volts rms.
+    pub highest_volts: f64,
 }
 
 /// What is the same for every row of a sweep.

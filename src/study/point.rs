@@ -37,9 +37,7 @@ fn report(circuit: &Circuit, engine: &Engine, frequency_hz: f64) -> Solution {
         .max_by(|&a, &b| magnitude(&elements[a]).total_cmp(&magnitude(&elements[b])));
     let readings = circuit.reads.iter().map(|read| reading(engine, read, &mut notes)).collect();
     let nodes = node_results(circuit, engine);
-    let highest = nodes.iter().map(|n| n.voltage.value.norm()).fold(0.0, f64::max);
-    let highest = highest_drop.map_or(highest, |i| highest.max(magnitude(&elements[i])));
-    notes.extend(caution(highest, frequency_hz));
+    notes.extend(caution(engine.highest_volts(), frequency_hz));
     if elements.iter().any(|e| e.drop.is_none()) {
         notes.push(
             "at f = 0 capacitors are open; the voltage across one between two islands is not \
@@ -68,12 +66,22 @@ pub fn caution(highest_volts: f64, frequency_hz: f64) -> Option<String> {
         false => (EXTRA_LOW_VOLTS_AC, "rms a.c."),
     };
     (highest_volts > limit).then(|| {
+        let volts = readable(highest_volts);
         format!(
-            "{highest_volts:.3e} V is above the extra-low voltage limit of {limit} V {kind} (IEC \
+            "{volts} V is above the extra-low voltage limit of {limit} V {kind} (IEC \
              60364-4-41): these results describe a model; local electrical codes and a licensed \
              person decide what is safe"
         )
     })
+}
+
+/// Four digits, and all of them before the point: `193.1`, `11547`.
+fn readable(volts: f64) -> String {
+    if volts >= 1e6 {
+        return format!("{volts:.3e}");
+    }
+    let decimals = if volts < 100.0 { 2 } else { usize::from(volts < 1e3) };
+    format!("{volts:.decimals$}")
 }
 
 fn node_results(circuit: &Circuit, engine: &Engine) -> Vec<NodeResult> {

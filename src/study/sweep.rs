@@ -60,7 +60,8 @@ pub fn run(
     sink: &mut dyn FnMut(Event) -> ControlFlow<()>,
 ) -> Result<(), StudyError> {
     let combinations = plan.vary.iter().map(|v| v.count).product::<usize>();
-    let mut headed = false;
+    // Delivered with the first row, so that a circuit without any solution delivers nothing.
+    let mut headings = None;
     for combination in 0..combinations {
         let mut varied = vec![0.0; plan.vary.len()];
         let mut rest = combination;
@@ -73,14 +74,10 @@ pub fn run(
         }
         let (circuit, found) = program.circuit();
         let circuit = circuit.ok_or(StudyError::Refused(found))?;
-        if !headed {
-            headed = true;
-            let head = head(&circuit, plan, combinations);
-            if sink(Event::Head(&head)).is_break() {
-                return Ok(());
-            }
+        if combination == 0 {
+            headings = Some(head(&circuit, plan, combinations));
         }
-        if sweep_one(&circuit, plan, varied, sink)?.is_break() {
+        if sweep_one(&circuit, plan, varied, &mut headings, sink)?.is_break() {
             return Ok(());
         }
     }
@@ -103,6 +100,7 @@ fn sweep_one(
     circuit: &Circuit,
     plan: &Plan,
     varied: Vec<f64>,
+    headings: &mut Option<SweepHead>,
     sink: &mut dyn FnMut(Event) -> ControlFlow<()>,
 ) -> Result<ControlFlow<()>, StudyError> {
     let mut engines: [Option<Engine>; 2] = [None, None];
@@ -112,6 +110,7 @@ fn sweep_one(
         frequency_hz: 0.0,
         values: vec![undetermined; circuit.reads.len()],
         missed: vec![false; circuit.reads.len()],
+        highest_volts: 0.0,
     };
     for &frequency_hz in &plan.frequencies_hz {
         let regime = regime_of(frequency_hz);
@@ -122,10 +121,15 @@ fn sweep_one(
         };
         engine.solve(frequency_hz)?;
         row.frequency_hz = frequency_hz;
+        row.highest_volts = engine.highest_volts();
         for (i, read) in circuit.reads.iter().enumerate() {
             let value = engine.value(read.value).map_or(undetermined, Value::from);
             row.values[i] = value;
             row.missed[i] = !read.limits.is_empty() && !missed(engine, read, value).is_empty();
+        }
+        let head = headings.take();
+        if head.is_some_and(|head| sink(Event::Head(&head)).is_break()) {
+            return Ok(ControlFlow::Break(()));
         }
         if sink(Event::Row(&row)).is_break() {
             return Ok(ControlFlow::Break(()));

@@ -4,6 +4,7 @@ use crate::cli::output::RowWriter;
 use crate::cli::report::{self, Ending, Stop};
 use crate::render::Render;
 use crate::render::number::exact;
+use crate::study::point::caution;
 use crate::study::sweep::Event;
 use crate::study::{SweepHead, SweepRow};
 use indicatif::{ProgressBar, ProgressDrawTarget, ProgressStyle};
@@ -26,6 +27,8 @@ pub struct Rows {
     say_peak: bool,
     count: usize,
     missed: Vec<Missed>,
+    /// The highest voltages seen, at 0 Hz and above.
+    highest_volts: [f64; 2],
 }
 
 /// A bar on standard error, where somebody sees it and the rows do not.
@@ -52,6 +55,7 @@ impl Rows {
             say_peak,
             count: 0,
             missed: Vec::new(),
+            highest_volts: [0.0; 2],
         }
     }
 
@@ -81,6 +85,8 @@ impl Rows {
 
     fn row(&mut self, row: &SweepRow) -> io::Result<()> {
         self.count += 1;
+        let highest = &mut self.highest_volts[usize::from(row.frequency_hz > 0.0)];
+        *highest = highest.max(row.highest_volts);
         for (missed, _) in self.missed.iter_mut().zip(&row.missed).filter(|(_, now)| **now) {
             if missed.rows == 0 {
                 missed.first_hz = row.frequency_hz;
@@ -103,6 +109,10 @@ impl Rows {
         self.writer.flush()?;
         if self.say_peak {
             report::note("volts and amperes are amplitudes (peak); powers are means");
+        }
+        let [direct, alternating] = self.highest_volts;
+        for text in [caution(direct, 0.0), caution(alternating, 1.0)].into_iter().flatten() {
+            report::note(&text);
         }
         let mut ending = Ending::Done;
         for missed in self.missed.iter().filter(|missed| missed.rows > 0) {
