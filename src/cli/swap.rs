@@ -34,6 +34,9 @@ pub struct SwapArgs {
     /// One more reading to be carried over
     #[arg(long, value_name = "EXPR", value_parser = typed_value, allow_hyphen_values = true)]
     read: Vec<String>,
+    /// tee, pi, mesh, leakage or dependent
+    #[arg(long, value_name = "KIND")]
+    into: Kind,
     #[command(flatten)]
     how: HowArgs,
     /// Add a table of the sets, their legs and what could be bought, as comments
@@ -44,9 +47,6 @@ pub struct SwapArgs {
 /// How couplings are replaced.
 #[derive(Args, Debug)]
 pub struct HowArgs {
-    /// tee, pi, mesh, leakage or dependent
-    #[arg(long, value_name = "KIND")]
-    into: Kind,
     /// Replace only the set of these windings, as in `--only dock,buoy`
     #[arg(long, value_name = "WINDINGS", value_delimiter = ',')]
     only: Vec<String>,
@@ -69,9 +69,9 @@ pub struct HowArgs {
 
 impl HowArgs {
     /// What was typed, for the library.
-    pub fn options(&self) -> Options {
+    pub fn options(&self, into: Kind) -> Options {
         Options {
-            into: self.into,
+            into,
             only: self.only.iter().map(|name| name.trim().to_owned()).collect(),
             tie: self.tie.clone(),
             keep_isolation: self.keep_isolation,
@@ -101,7 +101,7 @@ pub fn run(typed: &SwapArgs) -> Result<Ending, Stop> {
     }
     let (circuit, found) = program.circuit();
     let Some(circuit) = circuit else { return Err(Stop::Wrong(found, program.sources)) };
-    let twin = swap::twin(&circuit, &typed.how.options())
+    let twin = swap::twin(&circuit, &typed.how.options(typed.into))
         .map_err(|error| Stop::Wrong(vec![error.diagnostic()], program.sources.clone()))?;
     let head = head(&input::short_name(&typed.file), &circuit, &twin, typed.explain);
     output::write_all(Printer::new(&twin.circuit).text(&head).as_bytes())?;
