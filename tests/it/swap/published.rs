@@ -161,12 +161,12 @@ const FOUR_INDUCTANCES: [(usize, Option<usize>, f64); 4] =
 
 fn four(driven: usize, shorted: Option<usize>) -> String {
     let mut text = String::new();
-    for i in 0..4 {
+    for (i, row) in FOUR.iter().enumerate() {
         let low = if i == 0 { "gnd".into() } else { format!("k{}", i + 1) };
-        let own = FOUR[i][i];
+        let own = row[i];
         text += &format!("a{n} -(* w{n}: {own} µH )- {low}\n", n = i + 1);
-        for j in i + 1..4 {
-            text += &format!("couple w{}, w{} : M {} µH\n", i + 1, j + 1, FOUR[i][j]);
+        for (j, mutual) in row.iter().enumerate().skip(i + 1) {
+            text += &format!("couple w{}, w{} : M {mutual} µH\n", i + 1, j + 1);
         }
     }
     text += &format!("a{driven} -( short_test: 0 Ω )- x\n");
