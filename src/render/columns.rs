@@ -68,9 +68,24 @@ pub struct Column {
     numbers: bool,
 }
 
+/// Words longer than this lose their middle.
+const LONGEST_WORDS: usize = 120;
+
 /// A column of words.
 pub fn words(heading: &'static str, cells: impl IntoIterator<Item = String>) -> Column {
-    Column { heading, cells: cells.into_iter().collect(), numbers: false }
+    Column { heading, cells: cells.into_iter().map(shortened).collect(), numbers: false }
+}
+
+/// Nobody reads names of kilobytes, and breaking them into lines takes a time that grows with
+/// their square.
+fn shortened(text: String) -> String {
+    let count = text.chars().count();
+    if count <= LONGEST_WORDS {
+        return text;
+    }
+    let half = LONGEST_WORDS / 2;
+    let first = text.chars().take(half);
+    first.chain(['…']).chain(text.chars().skip(count - half)).collect()
 }
 
 /// A column of complex values.

@@ -487,6 +487,11 @@ fn a_table_into_a_pipe_has_no_colours_and_fits_a_terminal() {
         assert!(!out.contains('\u{1b}'), "{out}");
         assert!(out.lines().all(|line| line.chars().count() <= 80), "{out}");
     }
+    let long = "long_name_".repeat(200_000);
+    let circuit = format!("gnd -( {long}: 1 V +)- {long} -( r: 3 Ω )- gnd\n");
+    let out = quiet(piped(circuit.as_bytes(), &["solve", "-", "--at", "1kHz"]));
+    let table = out.lines().filter(|line| line.starts_with("  "));
+    assert!(table.clone().count() > 10 && table.clone().all(|line| line.chars().count() <= 80));
     let ran = piped(b"gnd -( r: 3 )- a\n", &["check", "-"]);
     assert!(ran.code == Some(2) && !ran.err.contains('\u{1b}'), "{}", ran.err);
 }

@@ -8,7 +8,7 @@ use std::panic::{AssertUnwindSafe, catch_unwind};
 use std::path::{Path, PathBuf};
 
 /// Mutants of each circuit.
-const MUTANTS: usize = 30;
+const MUTANTS: usize = 200;
 /// The large circuits are copies of small ones as far as faults go.
 const MOST_BYTES: usize = 10_000;
 
