@@ -54,9 +54,13 @@ pub struct CompareArgs {
 }
 
 fn ratio(text: &str) -> Result<f64, String> {
-    match text.parse::<f64>() {
+    let (digits, unit) = match text.strip_suffix('%') {
+        Some(percent) => (percent.trim_end(), 0.01),
+        None => (text, 1.0),
+    };
+    match digits.parse::<f64>().map(|digits| digits * unit) {
         Ok(ratio) if ratio >= 0.0 && ratio.is_finite() => Ok(ratio),
-        _ => Err("give a ratio, as in 1e-6".to_owned()),
+        _ => Err("give a ratio, as in 1e-6 or 2%".to_owned()),
     }
 }
 
