@@ -1,5 +1,6 @@
 //! stub
 #![allow(missing_docs)]
+pub mod lanes;
 use crate::number::ComplexTwofold;
 use num_complex::Complex64;
 pub struct Pattern {
