@@ -1,8 +1,8 @@
 //! The four networks of the benchmark, as the equations a circuit's would be.
 
-use bifilar::number::{ComplexTwofold, Twofold};
+use bifilar::number::{Affine, ComplexTwofold, Twofold};
 use bifilar::solve::Pattern;
-use bifilar::solve::lanes::{Affine, Equations};
+use bifilar::solve::lanes::Equations;
 use num_complex::Complex64;
 use std::collections::BTreeMap;
 use std::f64::consts::TAU;

@@ -3,6 +3,7 @@
 use crate::solve::lanes::Buffers;
 use crate::solve::lanes::lane::Lane;
 use crate::solve::lanes::rows::RowPlan;
+use crate::solve::lanes::values::Given;
 
 /// Factors, and carries the right-hand sides through the lower factor on the way.
 #[inline(always)]
@@ -14,9 +15,8 @@ pub(super) fn factor<const W: usize, const V: usize, const FMA: bool>(
     let sides = driven.sides;
     let mut entry = 0;
     let (mut fill, mut source, mut target) = (0, 0, 0);
-    let mut largest = [0.0; W];
     let mut extra = entries.extras.iter().peekable();
-    driven.write::<W, FMA>(frequency, extras, carried);
+    let mut given = Given::default();
     for (step, head) in plan.heads.iter().enumerate() {
         let (done, work) = factors.split_at_mut(head.start as usize);
         let upper = head.upper as usize;
@@ -27,8 +27,9 @@ pub(super) fn factor<const W: usize, const V: usize, const FMA: bool>(
         fill += head.fills as usize;
         let last = entry + head.entries as usize;
         let places = &plan.entry_places[entry..last];
-        for (&place, coefficient) in places.iter().zip(&entries.coefficients[entry..last]) {
-            work[place as usize] = coefficient.at::<W, FMA>(frequency);
+        let coefficients = &entries.coefficients[entry..last];
+        for at in 0..places.len() {
+            work[places[at] as usize] = coefficients[at].at::<W, FMA>(frequency);
         }
         while let Some(&&(at, which)) = extra.peek().filter(|e| (e.0 as usize) < last) {
             let place = plan.entry_places[at as usize] as usize;
@@ -37,6 +38,7 @@ pub(super) fn factor<const W: usize, const V: usize, const FMA: bool>(
         }
         entry = last;
         let (before, here) = carried.split_at_mut(step * sides);
+        driven.begin::<W, FMA>(&mut given, step, frequency, extras, here);
         for t in 0..head.lower as usize {
             let from = plan.sources[source] as usize;
             source += 1;
@@ -45,15 +47,11 @@ pub(super) fn factor<const W: usize, const V: usize, const FMA: bool>(
             let Some((inverse, row)) = row.split_first() else { continue };
             let factor = work[upper + t].times::<FMA>(inverse);
             work[upper + t] = factor;
-            for w in 0..W {
-                let square = factor.re[w] * factor.re[w] + factor.im[w] * factor.im[w];
-                largest[w] = f64::max(largest[w], square);
-            }
             let targets = &plan.targets[target..target + row.len()];
             target += row.len();
-            for (entry, &at) in row.iter().zip(targets) {
-                let at = at as usize;
-                work[at] = work[at].less::<FMA>(&factor, entry);
+            for at in 0..row.len() {
+                let place = targets[at] as usize;
+                work[place] = work[place].less::<FMA>(&factor, &row[at]);
             }
             for side in 0..sides {
                 here[side] = here[side].less::<FMA>(&factor, &before[from * sides + side]);
@@ -62,11 +60,12 @@ pub(super) fn factor<const W: usize, const V: usize, const FMA: bool>(
         if step < plan.sparse {
             work[0] = work[0].inverse::<FMA>();
         } else {
-            let at = (step - plan.sparse) * plan.dense.stride;
-            dense[at..at + upper].copy_from_slice(&work[..upper]);
+            let row = &mut dense[(step - plan.sparse) * plan.dense.stride..][..upper];
+            for at in 0..upper {
+                row[at] = work[at];
+            }
         }
     }
-    buffers.growth = largest;
     if plan.dense.size > 0 {
         plan.dense.eliminate::<W, V, FMA>(&mut buffers.dense);
         carry_dense::<W, FMA>(plan, sides, buffers);
@@ -130,8 +129,9 @@ pub(super) fn back<const W: usize, const FMA: bool>(
         let row = &dense[i * plan.dense.stride..][..size];
         for side in 0..sides {
             let mut sum = carried[(plan.sparse + i) * sides + side];
-            for (entry, &column) in row[i + 1..].iter().zip(&plan.dense_columns[i + 1..]) {
-                sum = sum.less::<FMA>(entry, &solution[column as usize * sides + side]);
+            for j in i + 1..size {
+                let column = plan.dense_columns[j] as usize;
+                sum = sum.less::<FMA>(&row[j], &solution[column * sides + side]);
             }
             solution[plan.dense_columns[i] as usize * sides + side] = sum.times::<FMA>(&row[i]);
         }
@@ -144,8 +144,9 @@ pub(super) fn back<const W: usize, const FMA: bool>(
         last -= row.len();
         for side in 0..sides {
             let mut sum = carried[step * sides + side];
-            for (entry, &column) in row.iter().zip(columns) {
-                sum = sum.less::<FMA>(entry, &solution[column as usize * sides + side]);
+            for at in 0..row.len() {
+                let column = columns[at] as usize;
+                sum = sum.less::<FMA>(&row[at], &solution[column * sides + side]);
             }
             solution[head.column as usize * sides + side] = sum.times::<FMA>(inverse);
         }

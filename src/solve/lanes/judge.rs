@@ -3,7 +3,7 @@
 
 use crate::solve::lanes::Buffers;
 use crate::solve::lanes::lane::{Lane, fused};
-use crate::solve::lanes::values::Listing;
+use crate::solve::lanes::values::{Given, Listing};
 
 /// Smallest divisor: keeps 0/0 of a row without any value at zero.
 const LEAST: f64 = f64::MIN_POSITIVE;
@@ -12,44 +12,59 @@ const LEAST: f64 = f64::MIN_POSITIVE;
 /// |b − A·x| / (|A|·|x| + |b|) over rows and right-hand sides, infinite where the solution is not
 /// a number. Magnitudes are taken as |re| + |im|, which is right within a factor of √2.
 ///
-/// The residuals are left in `buffers.carried`.
+/// With `KEEP` the residuals are left in `buffers.carried`.
 #[inline(always)]
-pub(super) fn judge<const W: usize, const FMA: bool>(listing: &Listing, buffers: &mut Buffers<W>) {
-    let Buffers { frequency, carried, extras, solution, entries, driven, .. } = buffers;
-    driven.write::<W, FMA>(frequency, extras, carried);
+pub(super) fn judge<const W: usize, const FMA: bool, const KEEP: bool>(
+    listing: &Listing,
+    buffers: &mut Buffers<W>,
+) {
+    let Buffers { frequency, carried, extras, solution, entries, driven, right, .. } = buffers;
     let sides = driven.sides;
-    let mut worst = [0.0; W];
+    // The worst quotient so far as numerator and denominator: no division in the loop.
+    let (mut above, mut below) = ([0.0; W], [1.0; W]);
     let mut total = [0.0; W];
-    for side in 0..sides {
-        let mut at = 0;
-        let mut extra = entries.extras.iter().peekable();
-        for (order, &count) in listing.counts.iter().enumerate() {
-            let place = order * sides + side;
-            let mut rest = carried[place];
+    let (mut at, mut next_extra) = (0, 0);
+    let mut given = Given::default();
+    for (order, &count) in listing.counts.iter().enumerate() {
+        driven.begin::<W, FMA>(&mut given, order, frequency, extras, right);
+        let (first, last) = (at, at + count as usize);
+        let extras_before = next_extra;
+        for side in 0..sides {
+            at = first;
+            next_extra = extras_before;
+            let mut rest = right[side];
             let mut scale = rest.size();
-            let last = at + count as usize;
-            let row = listing.columns[at..last].iter().zip(&entries.coefficients[at..last]);
-            for (&column, coefficient) in row {
-                let mut value = coefficient.at::<W, FMA>(frequency);
-                if let Some(&&(_, which)) = extra.peek().filter(|e| e.0 as usize == at) {
+            let columns = &listing.columns[first..last];
+            let coefficients = &entries.coefficients[first..last];
+            for e in 0..columns.len() {
+                let mut value = coefficients[e].at::<W, FMA>(frequency);
+                if let Some(&(place, which)) = entries.extras.get(next_extra)
+                    && place as usize == at
+                {
                     value = value.plus(&extras[which as usize]);
-                    extra.next();
+                    next_extra += 1;
                 }
                 at += 1;
-                let x = &solution[column as usize * sides + side];
+                let x = &solution[columns[e] as usize * sides + side];
                 rest = rest.less::<FMA>(&value, x);
                 add_sizes::<W, FMA>(&mut scale, &value, x);
             }
             let size = rest.size();
             for w in 0..W {
-                worst[w] = f64::max(worst[w], size[w] / (scale[w] + LEAST));
-                total[w] += scale[w];
+                let divisor = scale[w] + LEAST;
+                total[w] += divisor;
+                let worse = size[w] * below[w] > above[w] * divisor;
+                above[w] = if worse { size[w] } else { above[w] };
+                below[w] = if worse { divisor } else { below[w] };
             }
-            carried[place] = rest;
+            if KEEP {
+                carried[order * sides + side] = rest;
+            }
         }
     }
     for w in 0..W {
-        buffers.backward[w] = if total[w].is_finite() { worst[w] } else { f64::INFINITY };
+        let worst = above[w] / below[w];
+        buffers.backward[w] = if total[w].is_finite() { worst } else { f64::INFINITY };
     }
 }
 

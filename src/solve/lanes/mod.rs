@@ -11,8 +11,10 @@
 mod dense;
 mod dispatch;
 mod eliminate;
+mod fronts;
 mod judge;
 mod lane;
+mod multifrontal;
 mod pivots;
 mod rows;
 #[cfg(test)]
@@ -22,13 +24,13 @@ mod work;
 
 pub use crate::solve::lanes::dispatch::Instructions;
 pub use crate::solve::lanes::lane::Lane;
-pub use crate::solve::lanes::values::{Affine, Equations};
+pub use crate::solve::lanes::values::Equations;
 
-use crate::number::ComplexTwofold;
 use crate::solve::Pattern;
 use crate::solve::lanes::dispatch::dispatch;
+use crate::solve::lanes::fronts::{Columns, FrontPlan};
 use crate::solve::lanes::rows::RowPlan;
-use crate::solve::lanes::values::{Driven, Entries};
+use crate::solve::lanes::values::{Driven, Entries, Listing};
 use crate::solve::lanes::work::Job;
 use num_complex::Complex64;
 use thiserror::Error;
@@ -39,6 +41,13 @@ pub const GOOD_BACKWARD_ERROR: f64 = 1e-13;
 
 /// Bytes of factors up to which sixteen lanes pay; beyond, they crowd the cache.
 const SIXTEEN_LANES_BYTES: usize = 4 << 20;
+
+/// Multiply-adds for each unknown from which fronts pay; below, their upkeep outweighs them.
+const FRONTS_PAY: u64 = 40;
+
+/// Backward error at the sample up to which pivots along the diagonal do: what one refinement
+/// with a residual in twice the precision makes good.
+const SUITABLE_BACKWARD_ERROR: f64 = 1e-10;
 
 /// Why there is no plan.
 #[derive(Clone, Debug, PartialEq, Error)]
@@ -69,9 +78,31 @@ pub struct Uses {
 #[derive(Clone, Debug)]
 pub struct Plan {
     n: usize,
-    rows: RowPlan,
+    shape: Shape,
     lanes: usize,
     instructions: Instructions,
+}
+
+#[derive(Clone, Debug)]
+enum Shape {
+    Rows(RowPlan),
+    Fronts(FrontPlan),
+}
+
+impl Shape {
+    fn listing(&self) -> &Listing {
+        match self {
+            Shape::Rows(rows) => &rows.listing,
+            Shape::Fronts(fronts) => &fronts.listing,
+        }
+    }
+
+    fn work(&self) -> u64 {
+        match self {
+            Shape::Rows(rows) => rows.work,
+            Shape::Fronts(fronts) => fronts.work,
+        }
+    }
 }
 
 /// What one lane's solution is worth.
@@ -79,8 +110,6 @@ pub struct Plan {
 pub struct Verdict {
     /// Largest componentwise backward error; infinite where the solution is not a number.
     pub backward_error: f64,
-    /// Largest multiplier of the elimination: how much an earlier row could grow a later one.
-    pub largest_multiplier: f64,
 }
 
 impl Verdict {
@@ -94,18 +123,23 @@ impl Verdict {
 #[derive(Clone, Debug)]
 struct Buffers<const W: usize> {
     entries: Entries,
+    /// Entries in the order in which fronts take them up.
+    front_entries: Entries,
     driven: Driven,
     frequency: [f64; W],
     extras: Vec<Lane<W>>,
     factors: Vec<Lane<W>>,
+    /// The block at work.
     dense: Vec<Lane<W>>,
+    /// Contributions of fronts to their parents.
+    waiting: Vec<Lane<W>>,
     /// Right-hand sides in the order of elimination.
     carried: Vec<Lane<W>>,
+    /// Right-hand sides of one row.
+    right: Vec<Lane<W>>,
     /// Solutions in the order of the unknowns.
     solution: Vec<Lane<W>>,
     backward: [f64; W],
-    /// Square of the largest multiplier.
-    growth: [f64; W],
 }
 
 #[derive(Clone, Debug)]
@@ -152,9 +186,8 @@ impl Plan {
         if !fits {
             return Err(PlanError::Mismatch);
         }
-        let f = ComplexTwofold::from(frequency_hz);
-        let at = |a: &Affine| (a.constant + a.slope * f).to_complex();
-        let mut values: Vec<Complex64> = equations.entries.iter().map(at).collect();
+        let mut values: Vec<Complex64> =
+            equations.entries.iter().map(|a| a.at(frequency_hz).to_complex()).collect();
         for (&entry, extra) in equations.extra_entries.iter().zip(extras) {
             values[entry as usize] += extra;
         }
@@ -168,7 +201,31 @@ impl Plan {
             None => 8,
         };
         let instructions = uses.instructions.unwrap_or_else(Instructions::widest);
-        Ok(Plan { n: *n, rows, lanes, instructions })
+        let heavy = rows.work > FRONTS_PAY * *n as u64 && !uses.further_solves;
+        let plan = Plan { n: *n, shape: Shape::Rows(rows), lanes, instructions };
+        if heavy {
+            let columns = Columns { n: *n, start: column_start, row };
+            let sides = equations.right.len() / *n;
+            if let Some(fronts) = FrontPlan::new(columns, equations, sides)
+                && fronts.work < plan.work()
+            {
+                let plan = Plan { n: *n, shape: Shape::Fronts(fronts), lanes, instructions };
+                if plan.suits(equations, frequency_hz, extras) {
+                    return Ok(plan);
+                }
+            }
+        }
+        Ok(plan)
+    }
+
+    /// Whether pivots along the diagonal do for the sample.
+    fn suits(&self, equations: &Equations, frequency_hz: f64, extras: &[Complex64]) -> bool {
+        let mut workspace = self.workspace(equations);
+        for (which, &value) in extras.iter().enumerate() {
+            (0..self.lanes).for_each(|lane| workspace.set_extra(which, lane, value));
+        }
+        let verdicts = self.run(&mut workspace, &[frequency_hz]);
+        verdicts.iter().all(|v| v.backward_error < SUITABLE_BACKWARD_ERROR)
     }
 
     /// Frequencies solved at once.
@@ -178,18 +235,23 @@ impl Plan {
 
     /// Complex multiply-adds of one factorisation and one solve at one frequency.
     pub fn work(&self) -> u64 {
-        self.rows.work
+        self.shape.work()
+    }
+
+    /// The matrix equals its transpose, and half of the work is spared.
+    pub fn is_symmetric(&self) -> bool {
+        matches!(self.shape, Shape::Fronts(_))
     }
 
     /// Makes room, and takes over the values of the equations.
     pub fn workspace(&self, equations: &Equations) -> Workspace {
-        let driven = Driven::new(&self.rows.listing.rows, equations);
+        let listing = self.shape.listing();
+        let driven = Driven::new(&listing.rows, equations);
         let sides = driven.sides;
-        let entries = Entries::new(&self.rows.listing.slots, equations);
-        let extras = equations.extras();
+        let entries = Entries::new(&listing.slots, equations);
         let width = match self.lanes {
-            16 => Width::Sixteen(Box::new(self.buffers(entries, driven, extras))),
-            _ => Width::Eight(Box::new(self.buffers(entries, driven, extras))),
+            16 => Width::Sixteen(Box::new(self.buffers(equations, entries, driven))),
+            _ => Width::Eight(Box::new(self.buffers(equations, entries, driven))),
         };
         let verdicts = vec![Verdict::default(); self.lanes];
         Workspace { width, n: self.n, sides, verdicts }
@@ -197,20 +259,28 @@ impl Plan {
 
     fn buffers<const W: usize>(
         &self,
+        equations: &Equations,
         entries: Entries,
         driven: Driven,
-        extras: usize,
     ) -> Buffers<W> {
+        let (factors, block, waiting, front_slots): (_, _, _, &[u32]) = match &self.shape {
+            Shape::Rows(rows) => (rows.storage, rows.dense.area(), 0, &[]),
+            Shape::Fronts(fronts) => {
+                (fronts.storage, fronts.largest, fronts.waiting, &fronts.slots)
+            }
+        };
         let room = |lanes: usize| vec![Lane::ZERO; lanes];
         Buffers {
             frequency: [0.0; W],
-            extras: room(extras),
-            factors: room(self.rows.storage),
-            dense: room(self.rows.dense.area()),
+            extras: room(equations.extras()),
+            factors: room(factors),
+            dense: room(block),
+            waiting: room(waiting),
+            front_entries: Entries::new(front_slots, equations),
+            right: room(driven.sides),
             carried: room(self.n * driven.sides),
             solution: room(self.n * driven.sides),
             backward: [f64::INFINITY; W],
-            growth: [0.0; W],
             entries,
             driven,
         }
@@ -227,10 +297,7 @@ impl Plan {
             }
             dispatch(self.instructions, self, buffers, Job::Run);
             for (lane, verdict) in workspace.verdicts.iter_mut().enumerate() {
-                *verdict = Verdict {
-                    backward_error: buffers.backward[lane],
-                    largest_multiplier: buffers.growth[lane].sqrt(),
-                };
+                *verdict = Verdict { backward_error: buffers.backward[lane] };
             }
         });
         &workspace.verdicts[..used]
@@ -239,10 +306,10 @@ impl Plan {
     /// Solves further right-hand sides, set by [`Workspace::set_right`], on the factors of the
     /// last run. The plan must have been made for further solves.
     pub fn solve(&self, workspace: &mut Workspace) {
-        assert!(self.rows.keeps_lower, "the plan was made without further solves");
+        let listing = self.listing_for_further_solves();
         either!(&mut workspace.width, buffers => {
             // They were set in the order of the equations.
-            for (order, &row) in self.rows.listing.rows.iter().enumerate() {
+            for (order, &row) in listing.rows.iter().enumerate() {
                 for side in 0..workspace.sides {
                     buffers.carried[order * workspace.sides + side] =
                         buffers.solution[row as usize * workspace.sides + side];
@@ -252,12 +319,19 @@ impl Plan {
         });
     }
 
+    fn listing_for_further_solves(&self) -> &Listing {
+        match &self.shape {
+            Shape::Rows(rows) if rows.keeps_lower => &rows.listing,
+            _ => panic!("the plan was made without further solves"),
+        }
+    }
+
     /// As [`Plan::solve`], with the matrix transposed.
     pub fn solve_transposed(&self, workspace: &mut Workspace) {
-        assert!(self.rows.keeps_lower, "the plan was made without further solves");
+        let listing = self.listing_for_further_solves();
         either!(&mut workspace.width, buffers => {
             dispatch(self.instructions, self, buffers, Job::SolveTransposed);
-            for (order, &row) in self.rows.listing.rows.iter().enumerate() {
+            for (order, &row) in listing.rows.iter().enumerate() {
                 for side in 0..workspace.sides {
                     buffers.solution[row as usize * workspace.sides + side] =
                         buffers.carried[order * workspace.sides + side];

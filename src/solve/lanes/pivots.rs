@@ -169,9 +169,13 @@ impl Active {
         best
     }
 
-    fn is_dense(&self) -> bool {
+    /// Neither zeros nor a cheap pivot are worth going on for.
+    fn is_dense(&self, cheapest: u64) -> bool {
         let left = self.row_queue.len();
-        left >= LEAST_DENSE && self.entries as f64 >= DENSE_SHARE * (left * left) as f64
+        let full = (left * left) as f64;
+        left >= LEAST_DENSE
+            && self.entries as f64 >= DENSE_SHARE * full
+            && cheapest as f64 >= DENSE_SHARE * full
     }
 
     /// Takes the pivot's row and column out and subtracts the row from all that need it.
@@ -283,14 +287,14 @@ pub(super) fn find(
     let mut active = Active::new(n, column_start, row, values);
     let mut out = Elimination { lower: vec![Vec::new(); n], ..Elimination::default() };
     for step in 0..n {
-        if active.is_dense() {
-            active.finish_dense(&mut out)?;
-            break;
-        }
         let Some(choice) = active.choose() else {
             let column = active.column_queue.first().map_or(0, |c| c.1 as usize);
             return Err(NoPivot { column });
         };
+        if active.is_dense(choice.cost) {
+            active.finish_dense(&mut out)?;
+            break;
+        }
         active.eliminate(choice, step as u32, &mut out);
     }
     Ok(out)

@@ -1,21 +1,11 @@
 //! The values of the equations, in the order in which a plan uses them.
 
-use crate::number::ComplexTwofold;
+use crate::number::Affine;
 use crate::solve::lanes::lane::{Coefficient, Lane};
 
-/// A value constant + slope·f with the frequency f in hertz.
-#[derive(Clone, Copy, Debug, Default, PartialEq)]
-pub struct Affine {
-    /// The value at f = 0.
-    pub constant: ComplexTwofold,
-    /// What each hertz adds.
-    pub slope: ComplexTwofold,
-}
-
-impl Affine {
-    fn rounded(&self) -> Coefficient {
-        Coefficient { constant: self.constant.to_complex(), slope: self.slope.to_complex() }
-    }
+/// The line in doubles.
+fn rounded(line: &Affine) -> Coefficient {
+    Coefficient { constant: line.constant.to_complex(), slope: line.slope.to_complex() }
 }
 
 /// Equations whose values follow the frequency: matrix and right-hand sides.
@@ -70,7 +60,7 @@ pub(super) struct Entries {
 
 impl Entries {
     pub fn new(slots: &[u32], equations: &Equations) -> Self {
-        let coefficients = slots.iter().map(|&s| equations.entries[s as usize].rounded()).collect();
+        let coefficients = slots.iter().map(|&s| rounded(&equations.entries[s as usize])).collect();
         let mut extras = Vec::new();
         if !equations.extra_entries.is_empty() {
             let mut place = vec![u32::MAX; equations.entries.len()];
@@ -83,6 +73,21 @@ impl Entries {
             extras.sort_unstable();
         }
         Entries { coefficients, extras }
+    }
+
+    /// One value with what is added to it, found by search: for the few outside the main loops.
+    #[inline(always)]
+    pub fn value<const W: usize, const FMA: bool>(
+        &self,
+        at: usize,
+        frequency: &[f64; W],
+        extras: &[Lane<W>],
+    ) -> Lane<W> {
+        let value = self.coefficients[at].at::<W, FMA>(frequency);
+        match self.extras.binary_search_by_key(&(at as u32), |e| e.0) {
+            Ok(found) => value.plus(&extras[self.extras[found].1 as usize]),
+            Err(_) => value,
+        }
     }
 }
 
@@ -107,32 +112,55 @@ impl Driven {
         let place = |at: usize| (order[at % n] * sides + at / n) as u32;
         let mut values = Vec::new();
         for (at, value) in equations.right.iter().enumerate() {
-            if *value != Affine::default() {
-                values.push((place(at), value.rounded()));
+            if !value.is_zero() {
+                values.push((place(at), rounded(value)));
             }
         }
         values.sort_unstable_by_key(|v| v.0);
         let first = equations.extra_entries.len() as u32;
         let numbered = equations.extra_right.iter().zip(first..);
-        let extras = numbered.map(|(&at, which)| (place(at as usize), which)).collect();
+        let mut extras: Vec<_> = numbered.map(|(&at, which)| (place(at as usize), which)).collect();
+        extras.sort_unstable();
         Driven { sides, values, extras }
     }
 
-    /// Writes the right-hand sides of all lanes.
+    /// Writes the right-hand sides of the row that is `order`-th in the order of elimination.
+    /// Rows must be asked for in that order; `given` is how far they have come.
     #[inline(always)]
-    pub fn write<const W: usize, const FMA: bool>(
+    pub fn begin<const W: usize, const FMA: bool>(
         &self,
+        given: &mut Given,
+        order: usize,
         frequency: &[f64; W],
         extras: &[Lane<W>],
         out: &mut [Lane<W>],
     ) {
-        out.fill(Lane::ZERO);
-        for (place, coefficient) in &self.values {
-            out[*place as usize] = coefficient.at::<W, FMA>(frequency);
+        for side in 0..self.sides {
+            out[side] = Lane::ZERO;
         }
-        for &(place, which) in &self.extras {
+        let (first, end) = (order * self.sides, (order + 1) * self.sides);
+        while let Some((place, value)) = self.values.get(given.values) {
+            let place = *place as usize;
+            if place >= end {
+                break;
+            }
+            out[place - first] = value.at::<W, FMA>(frequency);
+            given.values += 1;
+        }
+        while let Some(&(place, which)) = self.extras.get(given.extras) {
             let place = place as usize;
-            out[place] = out[place].plus(&extras[which as usize]);
+            if place >= end {
+                break;
+            }
+            out[place - first] = out[place - first].plus(&extras[which as usize]);
+            given.extras += 1;
         }
     }
+}
+
+/// How far the right-hand sides have been given out.
+#[derive(Clone, Copy, Debug, Default)]
+pub(super) struct Given {
+    values: usize,
+    extras: usize,
 }

@@ -1,6 +1,6 @@
 //! The jobs a plan does, each compiled once for every width of vectors.
 
-use crate::solve::lanes::{Buffers, Plan, eliminate, judge};
+use crate::solve::lanes::{Buffers, Plan, Shape, eliminate, judge, multifrontal};
 
 /// What is to be done.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -21,16 +21,21 @@ pub(super) fn work<const W: usize, const V: usize, const FMA: bool>(
     job: Job,
 ) {
     let sides = buffers.driven.sides;
-    match job {
-        Job::Run => {
-            eliminate::factor::<W, V, FMA>(&plan.rows, buffers);
-            eliminate::back::<W, FMA>(&plan.rows, sides, buffers);
-            judge::judge::<W, FMA>(&plan.rows.listing, buffers);
+    match (&plan.shape, job) {
+        (Shape::Rows(rows), Job::Run) => {
+            eliminate::factor::<W, V, FMA>(rows, buffers);
+            eliminate::back::<W, FMA>(rows, sides, buffers);
         }
-        Job::Solve => {
-            eliminate::carry::<W, FMA>(&plan.rows, sides, buffers);
-            eliminate::back::<W, FMA>(&plan.rows, sides, buffers);
+        (Shape::Rows(rows), Job::Solve) => {
+            eliminate::carry::<W, FMA>(rows, sides, buffers);
+            eliminate::back::<W, FMA>(rows, sides, buffers);
         }
-        Job::SolveTransposed => eliminate::transposed::<W, FMA>(&plan.rows, sides, buffers),
+        (Shape::Rows(rows), Job::SolveTransposed) => {
+            eliminate::transposed::<W, FMA>(rows, sides, buffers);
+        }
+        (Shape::Fronts(fronts), _) => multifrontal::solve::<W, V, FMA>(fronts, buffers),
+    }
+    if job == Job::Run {
+        judge::judge::<W, FMA, false>(plan.shape.listing(), buffers);
     }
 }
