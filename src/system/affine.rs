@@ -89,9 +89,7 @@ fn operation(operation: Operation, known: &[Option<Affine>]) -> Option<Affine> {
     use Operation as O;
     let line = |id: FormulaId| known[id.index()];
     match operation {
-        O::Frequency => {
-            Some(Affine { constant: ComplexTwofold::ZERO, slope: ComplexTwofold::ONE })
-        }
+        O::Frequency => Some(Affine { constant: ComplexTwofold::ZERO, slope: ComplexTwofold::ONE }),
         O::Negative(a) => Some(negated(line(a)?)),
         O::Sum(a, b) => Some(sum(line(a)?, line(b)?)),
         O::Difference(a, b) => Some(sum(line(a)?, negated(line(b)?))),
@@ -105,10 +103,8 @@ fn operation(operation: Operation, known: &[Option<Affine>]) -> Option<Affine> {
         }
         O::Quotient(a, b) => {
             let (a, b) = (line(a)?, line(b)?);
-            (b.slope.is_zero() && !b.constant.is_zero()).then(|| Affine {
-                constant: a.constant / b.constant,
-                slope: a.slope / b.constant,
-            })
+            (b.slope.is_zero() && !b.constant.is_zero())
+                .then(|| Affine { constant: a.constant / b.constant, slope: a.slope / b.constant })
         }
         _ => None,
     }

@@ -203,10 +203,8 @@ fn tile<const W: usize, const V: usize, const R: usize, const C: usize, const FM
         for r in 0..R {
             for c in 0..C {
                 let from = &block[(i + r) * stride + j + c];
-                for v in 0..V {
-                    re[r][c][v] = from.re[part + v];
-                    im[r][c][v] = from.im[part + v];
-                }
+                re[r][c].copy_from_slice(&from.re[part..part + V]);
+                im[r][c].copy_from_slice(&from.im[part..part + V]);
             }
         }
         for k in inner.clone() {
@@ -231,10 +229,8 @@ fn tile<const W: usize, const V: usize, const R: usize, const C: usize, const FM
         for r in 0..R {
             for c in 0..C {
                 let to = &mut block[(i + r) * stride + j + c];
-                for v in 0..V {
-                    to.re[part + v] = re[r][c][v];
-                    to.im[part + v] = im[r][c][v];
-                }
+                to.re[part..part + V].copy_from_slice(&re[r][c]);
+                to.im[part..part + V].copy_from_slice(&im[r][c]);
             }
         }
     }

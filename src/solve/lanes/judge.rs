@@ -12,11 +12,12 @@ const LEAST: f64 = f64::MIN_POSITIVE;
 /// |b − A·x| / (|A|·|x| + |b|) over rows and right-hand sides, infinite where the solution is not
 /// a number. Magnitudes are taken as |re| + |im|, which is right within a factor of √2.
 ///
-/// With `KEEP` the residuals are left in `buffers.carried`.
+/// The residuals are left in `buffers.carried` if `keep` is set.
 #[inline(always)]
-pub(super) fn judge<const W: usize, const FMA: bool, const KEEP: bool>(
+pub(super) fn judge<const W: usize, const FMA: bool>(
     listing: &Listing,
     buffers: &mut Buffers<W>,
+    keep: bool,
 ) {
     let Buffers { frequency, carried, extras, solution, entries, driven, right, .. } = buffers;
     let sides = driven.sides;
@@ -51,13 +52,13 @@ pub(super) fn judge<const W: usize, const FMA: bool, const KEEP: bool>(
             }
             let size = rest.size();
             for w in 0..W {
-                let divisor = scale[w] + LEAST;
-                total[w] += divisor;
-                let worse = size[w] * below[w] > above[w] * divisor;
-                above[w] = if worse { size[w] } else { above[w] };
-                below[w] = if worse { divisor } else { below[w] };
+                scale[w] += LEAST;
             }
-            if KEEP {
+            for w in 0..W {
+                total[w] += scale[w];
+            }
+            keep_worse(&mut above, &mut below, &size, &scale);
+            if keep {
                 carried[order * sides + side] = rest;
             }
         }
@@ -65,6 +66,29 @@ pub(super) fn judge<const W: usize, const FMA: bool, const KEEP: bool>(
     for w in 0..W {
         let worst = above[w] / below[w];
         buffers.backward[w] = if total[w].is_finite() { worst } else { f64::INFINITY };
+    }
+}
+
+/// Takes size/scale in the place of above/below where it is larger.
+#[inline(always)]
+fn keep_worse<const W: usize>(
+    above: &mut [f64; W],
+    below: &mut [f64; W],
+    size: &[f64; W],
+    scale: &[f64; W],
+) {
+    let (mut new, mut old) = ([0.0; W], [0.0; W]);
+    for w in 0..W {
+        new[w] = size[w] * below[w];
+    }
+    for w in 0..W {
+        old[w] = above[w] * scale[w];
+    }
+    for w in 0..W {
+        above[w] = if new[w] > old[w] { size[w] } else { above[w] };
+    }
+    for w in 0..W {
+        below[w] = if new[w] > old[w] { scale[w] } else { below[w] };
     }
 }
 

@@ -97,6 +97,14 @@ impl Shape {
         }
     }
 
+    /// Whether further right-hand sides can be solved on the factors.
+    fn keeps_factors(&self) -> bool {
+        match self {
+            Shape::Rows(rows) => rows.keeps_lower,
+            Shape::Fronts(_) => true,
+        }
+    }
+
     fn work(&self) -> u64 {
         match self {
             Shape::Rows(rows) => rows.work,
@@ -139,6 +147,8 @@ struct Buffers<const W: usize> {
     right: Vec<Lane<W>>,
     /// Solutions in the order of the unknowns.
     solution: Vec<Lane<W>>,
+    /// Solutions before a correction.
+    before: Vec<Lane<W>>,
     backward: [f64; W],
 }
 
@@ -193,7 +203,9 @@ impl Plan {
         }
         let found = pivots::find(*n, column_start, row, &values)
             .map_err(|none| PlanError::Singular { column: none.column })?;
-        let rows = RowPlan::new(*n, column_start, row, &found, uses.further_solves);
+        // Beside a dense block the multipliers of the sparse rows cost next to nothing.
+        let keeps = uses.further_solves || !found.dense_rows.is_empty();
+        let rows = RowPlan::new(*n, column_start, row, &found, keeps);
         let small = rows.storage * size_of::<Lane<16>>() <= SIXTEEN_LANES_BYTES;
         let lanes = match uses.lanes {
             Some(lanes) => lanes,
@@ -280,6 +292,7 @@ impl Plan {
             right: room(driven.sides),
             carried: room(self.n * driven.sides),
             solution: room(self.n * driven.sides),
+            before: room(if self.shape.keeps_factors() { self.n * driven.sides } else { 0 }),
             backward: [f64::INFINITY; W],
             entries,
             driven,

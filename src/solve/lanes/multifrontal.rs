@@ -5,16 +5,21 @@ use crate::solve::lanes::fronts::{Front, FrontPlan, contribution};
 use crate::solve::lanes::lane::Lane;
 use crate::solve::lanes::values::Given;
 
-/// Solves completely: single unknowns, fronts, last unknowns.
+/// Solves completely: single unknowns, fronts, last unknowns. With `again`, the factors that
+/// stand are used for the right-hand sides in `carried`.
 #[inline(always)]
 pub(super) fn solve<const W: usize, const V: usize, const FMA: bool>(
     plan: &FrontPlan,
     buffers: &mut Buffers<W>,
+    again: bool,
 ) {
-    let mut given = Given::default();
+    let mut given = (!again).then(Given::default);
     let mut entry = 0;
     single::<W, FMA>(plan, buffers, &mut given, 0..plan.before, &mut entry);
-    factor::<W, V, FMA>(plan, buffers, &mut given);
+    match &mut given {
+        Some(given) => factor::<W, V, FMA>(plan, buffers, given),
+        None => carry::<W, FMA>(plan, buffers),
+    }
     back::<W, FMA>(plan, buffers);
     let last = plan.before + plan.inside;
     entry += plan.listing.counts[plan.before..last].iter().sum::<u32>() as usize;
@@ -26,14 +31,17 @@ pub(super) fn solve<const W: usize, const V: usize, const FMA: bool>(
 fn single<const W: usize, const FMA: bool>(
     plan: &FrontPlan,
     buffers: &mut Buffers<W>,
-    given: &mut Given,
+    given: &mut Option<Given>,
     which: std::ops::Range<usize>,
     entry: &mut usize,
 ) {
-    let Buffers { frequency, extras, right, solution, entries, driven, .. } = buffers;
+    let Buffers { frequency, extras, right, solution, entries, driven, carried, .. } = buffers;
     let sides = driven.sides;
     for at in which {
-        driven.begin::<W, FMA>(given, at, frequency, extras, right);
+        match given {
+            Some(given) => driven.begin::<W, FMA>(given, at, frequency, extras, right),
+            None => right.copy_from_slice(&carried[at * sides..(at + 1) * sides]),
+        }
         let unknown = plan.unknowns[at];
         let mut inverse = Lane::ZERO;
         for e in *entry..*entry + plan.listing.counts[at] as usize {
@@ -141,6 +149,38 @@ fn factor<const W: usize, const V: usize, const FMA: bool>(
             waiting[top..top + length].copy_from_slice(&row[pivots..=i]);
             waiting[top + length..top + length + sides].copy_from_slice(&row[size..]);
             top += length + sides;
+        }
+    }
+}
+
+/// Carries the right-hand sides in `carried` through the lower factor, which is the upper one
+/// divided by its pivots.
+#[inline(always)]
+fn carry<const W: usize, const FMA: bool>(plan: &FrontPlan, buffers: &mut Buffers<W>) {
+    let Buffers { frequency, extras, factors, carried, solution, entries, driven, .. } = buffers;
+    let sides = driven.sides;
+    for &(at, e) in &plan.known {
+        let value = entries.value::<W, FMA>(e as usize, frequency, extras);
+        let column = plan.listing.columns[e as usize] as usize;
+        for side in 0..sides {
+            let to = &mut carried[at as usize * sides + side];
+            *to = to.less::<FMA>(&value, &solution[column * sides + side]);
+        }
+    }
+    for front in &plan.fronts {
+        let rows = &plan.rows[front.rows.0 as usize..front.rows.1 as usize];
+        let mut begin = front.start as usize;
+        for k in 0..front.pivots as usize {
+            let row = &factors[begin..begin + rows.len() - k];
+            begin += row.len();
+            for side in 0..sides {
+                let place = |row: u32| (plan.before + row as usize) * sides + side;
+                let scaled = carried[place(rows[k])].times::<FMA>(&row[0]);
+                for j in 1..row.len() {
+                    let to = &mut carried[place(rows[k + j])];
+                    *to = to.less::<FMA>(&row[j], &scaled);
+                }
+            }
         }
     }
 }
