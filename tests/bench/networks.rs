@@ -131,7 +131,7 @@ pub fn ladder() -> Network {
     b.done("ladder", 1e4, 1e7)
 }
 
-/// A supply plane of 60 × 60 nodes with R-L branches, fed at its corners.
+/// A supply plane of 60 × 60 nodes with R-L branches and a load at every node, fed at its corners.
 pub fn grid() -> Network {
     const SIDE: usize = 60;
     let (mut b, mut spread) = (Builder::default(), Spread::new(2));
@@ -139,7 +139,7 @@ pub fn grid() -> Network {
     let node = |x: usize, y: usize| nodes[y * SIDE + x];
     for y in 0..SIDE {
         for x in 0..SIDE {
-            b.admittance(node(x, y), GROUND, spread.around(1e-6), spread.around(1e-9));
+            b.admittance(node(x, y), GROUND, spread.around(1e-3), spread.around(1e-9));
             if x + 1 < SIDE {
                 b.branch(node(x, y), node(x + 1, y), spread.around(0.5), spread.around(1e-6));
             }

@@ -12,6 +12,10 @@ use faer::sparse::SymbolicSparseColMatRef;
 use faer::sparse::linalg::amd;
 use std::collections::HashMap;
 
+/// A column joins the front of its parent where it has at most one in so many rows to spare:
+/// a few zeros are computed with, and a contribution need not be added up.
+const SPARE_SHARE: usize = 6;
+
 /// One front.
 #[derive(Clone, Debug)]
 pub(super) struct Front {
@@ -261,10 +265,11 @@ impl FrontPlan {
         let mut first = 0;
         while first < n {
             let mut last = first;
-            while last + 1 < n
-                && parent[last] as usize == last + 1
-                && below[last].len() == below[last + 1].len() + 1
-            {
+            while last + 1 < n && parent[last] as usize == last + 1 {
+                let spare = below[last + 1].len() + 1 - below[last].len();
+                if spare > below[last].len() / SPARE_SHARE {
+                    break;
+                }
                 last += 1;
             }
             let pivots = last + 1 - first;

@@ -65,7 +65,8 @@ pub(super) fn judge<const W: usize, const FMA: bool>(
     }
     for w in 0..W {
         let worst = above[w] / below[w];
-        buffers.backward[w] = if total[w].is_finite() { worst } else { f64::INFINITY };
+        buffers.backward[w] =
+            if total[w].is_finite() && worst.is_finite() { worst } else { f64::INFINITY };
     }
 }
 

@@ -8,6 +8,10 @@
 //! Every lane sees the same operations whatever stands in the others, so results do not depend on
 //! how frequencies are grouped.
 
+// Loops that count are the plainest way to say what every lane does, and are what the compiler
+// turns into vector instructions.
+#![allow(clippy::needless_range_loop, clippy::manual_memcpy)]
+
 mod dense;
 mod dispatch;
 mod eliminate;
@@ -44,6 +48,9 @@ const SIXTEEN_LANES_BYTES: usize = 4 << 20;
 
 /// Multiply-adds for each unknown from which fronts pay; below, their upkeep outweighs them.
 const FRONTS_PAY: u64 = 40;
+
+/// Share of the work of the general plan up to which fronts pay: they move more memory.
+const FRONTS_SHARE: f64 = 0.6;
 
 /// Backward error at the sample up to which pivots along the diagonal do: what one refinement
 /// with a residual in twice the precision makes good.
@@ -189,7 +196,7 @@ impl Plan {
     ) -> Result<Self, PlanError> {
         let Pattern { n, column_start, row } = pattern;
         let fits = equations.entries.len() == row.len()
-            && equations.right.len() % (*n).max(1) == 0
+            && equations.right.len().is_multiple_of((*n).max(1))
             && extras.len() == equations.extras()
             && equations.extra_entries.iter().all(|&e| (e as usize) < row.len())
             && equations.extra_right.iter().all(|&e| (e as usize) < equations.right.len());
@@ -219,7 +226,7 @@ impl Plan {
             let columns = Columns { n: *n, start: column_start, row };
             let sides = equations.right.len() / *n;
             if let Some(fronts) = FrontPlan::new(columns, equations, sides)
-                && fronts.work < plan.work()
+                && (fronts.work as f64) < FRONTS_SHARE * plan.work() as f64
             {
                 let plan = Plan { n: *n, shape: Shape::Fronts(fronts), lanes, instructions };
                 if plan.suits(equations, frequency_hz, extras) {

@@ -11,8 +11,6 @@ use crate::solve::lanes::values::Listing;
 /// One row in the order of elimination.
 #[derive(Clone, Copy, Debug)]
 pub(super) struct Head {
-    /// The equation.
-    pub row: u32,
     /// The unknown that it is solved for.
     pub column: u32,
     /// Where it stands in the factors: first the pivot, then the upper factor, then multipliers.
@@ -161,7 +159,6 @@ impl Builder<'_> {
             Some(h) => h.start + h.upper,
         };
         self.plan.heads.push(Head {
-            row,
             column,
             start,
             upper: upper.len() as u32,

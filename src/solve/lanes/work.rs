@@ -38,8 +38,7 @@ pub(super) fn work<const W: usize, const V: usize, const FMA: bool>(
     for round in 0..rounds {
         let refining = round > 0;
         if refining {
-            let bad = |error: &f64| !(*error <= GOOD_BACKWARD_ERROR);
-            if !buffers.backward.iter().any(bad) {
+            if buffers.backward.iter().all(|&error| error <= GOOD_BACKWARD_ERROR) {
                 break;
             }
             buffers.before.copy_from_slice(&buffers.solution);
@@ -82,7 +81,8 @@ fn correct<const W: usize>(buffers: &mut Buffers<W>) {
     let Buffers { before, solution, backward, .. } = buffers;
     for (old, new) in before.iter().zip(solution) {
         for w in 0..W {
-            let add = !(backward[w] <= GOOD_BACKWARD_ERROR);
+            // The judge leaves infinity where there is no number.
+            let add = backward[w] > GOOD_BACKWARD_ERROR;
             new.re[w] = if add { old.re[w] + new.re[w] } else { old.re[w] };
             new.im[w] = if add { old.im[w] + new.im[w] } else { old.im[w] };
         }
