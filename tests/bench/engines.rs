@@ -18,10 +18,13 @@ const ROUNDS: usize = 9;
 /// Shortest time that is measured, in seconds.
 const LEAST_SECONDS: f64 = 0.1;
 
-/// Something that solves a network at each of some frequencies.
+/// Solves a network at each of some frequencies.
+type Sweep<'a> = Box<dyn FnMut(&[f64]) + 'a>;
+
+/// Something to be timed.
 struct Engine<'a> {
     name: String,
-    sweep: Box<dyn FnMut(&[f64]) + 'a>,
+    sweep: Sweep<'a>,
     best_seconds: f64,
 }
 
