@@ -1,5 +1,6 @@
 //! Numbers and the fields the stamps and formulas are written over.
 
+pub mod affine;
 pub mod ball;
 pub mod balls;
 pub mod complex;
@@ -11,6 +12,7 @@ pub mod residues;
 mod tests;
 pub mod twofold;
 
+pub use crate::number::affine::Affine;
 pub use crate::number::ball::Ball;
 pub use crate::number::balls::Balls;
 pub use crate::number::complex::ComplexTwofold;

@@ -6,6 +6,7 @@
 //! current drives another, and for every resistor that may be zero. The pattern is found once per
 //! circuit; per frequency only values change.
 
+pub mod affine;
 mod stamp;
 
 use crate::circuit::island::{Islands, Regime};
