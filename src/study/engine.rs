@@ -115,6 +115,67 @@ impl<'c> Engine<'c> {
         Ok(())
     }
 
+    /// Takes over a solution found elsewhere, unknown by unknown with its bound, and evaluates the
+    /// readings. `needed` are the formulas of the frequency that they rest on.
+    pub(crate) fn adopt(
+        &mut self,
+        frequency_hz: f64,
+        needed: &[FormulaId],
+        solution: impl Fn(usize) -> (ComplexTwofold, f64),
+    ) {
+        self.evaluate_at(frequency_hz, needed);
+        for (unknown, (x, error)) in self.solution.iter_mut().zip(&mut self.error).enumerate() {
+            (*x, *error) = solution(unknown);
+        }
+        self.evaluate_readings();
+    }
+
+    /// Evaluates some formulas of the frequency.
+    pub(crate) fn evaluate_at(&mut self, frequency_hz: f64, which: &[FormulaId]) {
+        self.frequency = Ball::exact(ComplexTwofold::from(Complex64::new(frequency_hz, 0.0)));
+        let none = |_| Err(FieldError::Undecided);
+        let (tape, frequency) = (&self.system.tape, &self.frequency);
+        tape.evaluate_phase(&Balls, which, frequency, &mut self.values, none);
+    }
+
+    /// The formulas of the frequency that the readings and the formulas `besides` rest on,
+    /// operands first.
+    pub(crate) fn needed_of_frequency(&self, besides: &[FormulaId]) -> Vec<FormulaId> {
+        let tape = &self.system.tape;
+        let mut waiting: Vec<FormulaId> = besides.to_vec();
+        for read in &self.circuit.reads {
+            waiting.push(read.value);
+            waiting.extend(read.limits.iter().map(|limit| limit.value));
+        }
+        let mut seen = vec![false; tape.len()];
+        while let Some(id) = waiting.pop() {
+            if std::mem::replace(&mut seen[id.index()], true) {
+                continue;
+            }
+            let operation = tape.get(id).operation;
+            waiting.extend(operation.operands());
+            if let Operation::Measure(measure) = operation {
+                self.measure_rests_on(measure, &mut waiting);
+            }
+        }
+        self.of_frequency.iter().copied().filter(|id| seen[id.index()]).collect()
+    }
+
+    fn measure_rests_on(&self, measure: Measure, formulas: &mut Vec<FormulaId>) {
+        let (Measure::Amps(id) | Measure::Power(id)) = measure else { return };
+        match self.system.through[id.index()] {
+            Through::Unknown(_) => {}
+            Through::Admittance(y) => formulas.push(y),
+            Through::Given => {
+                if let Law::CurrentSource(drive) = &self.circuit.element(id).law {
+                    formulas.extend(drive.constant);
+                    formulas.extend(drive.terms.iter().map(|(factor, _)| *factor));
+                    // What drives a source may itself be a current, but one with an unknown.
+                }
+            }
+        }
+    }
+
     fn refuse(&self, fault: Fault, frequency_hz: f64) -> StudyError {
         // Formulas made for stamps carry the place of the value they were made from.
         let mut circuit = self.circuit.clone();

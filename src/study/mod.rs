@@ -1,5 +1,6 @@
 //! Studies: a circuit and a question in, plain results out. Nothing here prints.
 
+pub(crate) mod batch;
 pub mod compare;
 pub mod engine;
 pub mod explain;

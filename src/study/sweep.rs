@@ -4,10 +4,11 @@ use crate::circuit::island::Regime;
 use crate::circuit::program::Program;
 use crate::circuit::{Circuit, Read};
 use crate::quantity::Dimension;
+pub use crate::study::batch::Tally;
+use crate::study::batch::{self, Batches, Outcome};
 use crate::study::engine::Engine;
-use crate::study::point::{missed, regime_of};
-use crate::study::{StudyError, SweepHead, SweepRow, Value};
-use num_complex::Complex64;
+use crate::study::point::regime_of;
+use crate::study::{StudyError, SweepHead, SweepRow};
 use std::ops::ControlFlow;
 
 /// A parameter to vary: `count` values from `from` to `to`, evenly spaced, both included.
@@ -51,6 +52,8 @@ pub enum Event<'e> {
     Head(&'e SweepHead),
     /// One frequency.
     Row(&'e SweepRow),
+    /// After the last row of a circuit: how its frequencies were solved, where it was in batches.
+    Tally(&'e Tally),
 }
 
 /// Sweeps a circuit and hands each row to `sink`, which may stop the sweep.
@@ -103,37 +106,63 @@ fn sweep_one(
     headings: &mut Option<SweepHead>,
     sink: &mut dyn FnMut(Event) -> ControlFlow<()>,
 ) -> Result<ControlFlow<()>, StudyError> {
-    let mut engines: [Option<Engine>; 2] = [None, None];
-    let undetermined = Value { value: Complex64::new(f64::NAN, f64::NAN), error: f64::INFINITY };
-    let mut row = SweepRow {
-        varied,
-        frequency_hz: 0.0,
-        values: vec![undetermined; circuit.reads.len()],
-        missed: vec![false; circuit.reads.len()],
-        highest_volts: 0.0,
-    };
-    for &frequency_hz in &plan.frequencies_hz {
-        let regime = regime_of(frequency_hz);
-        let slot = &mut engines[usize::from(regime == Regime::Direct)];
-        let engine = match slot {
-            Some(engine) => engine,
-            None => slot.insert(Engine::new(circuit, regime)?),
-        };
-        engine.solve(frequency_hz)?;
-        row.frequency_hz = frequency_hz;
-        row.highest_volts = engine.highest_volts();
-        for (i, read) in circuit.reads.iter().enumerate() {
-            let value = engine.value(read.value).map_or(undetermined, Value::from);
-            row.values[i] = value;
-            row.missed[i] = !read.limits.is_empty() && !missed(engine, read, value).is_empty();
-        }
+    let mut emit = |outcome: Outcome| {
+        let row = outcome?;
         let head = headings.take();
         if head.is_some_and(|head| sink(Event::Head(&head)).is_break()) {
             return Ok(ControlFlow::Break(()));
         }
-        if sink(Event::Row(&row)).is_break() {
-            return Ok(ControlFlow::Break(()));
+        Ok(sink(Event::Row(&row)))
+    };
+    let mut batches = batches(circuit, &plan.frequencies_hz)?;
+    let mut engines: [Option<Engine>; 2] = [None, None];
+    let mut rest = &plan.frequencies_hz[..];
+    while let Some(&frequency_hz) = rest.first() {
+        let outcomes = match &mut batches {
+            Some(batches) if frequency_hz > 0.0 => {
+                let zero = rest.iter().position(|f| *f == 0.0).unwrap_or(rest.len());
+                let (now, later) = rest.split_at(zero.min(batches.round()));
+                rest = later;
+                batches.rows(now, &varied)
+            }
+            _ => {
+                rest = &rest[1..];
+                let regime = regime_of(frequency_hz);
+                let slot = &mut engines[usize::from(regime == Regime::Direct)];
+                let engine = match slot {
+                    Some(engine) => engine,
+                    None => slot.insert(Engine::new(circuit, regime)?),
+                };
+                let solved = engine.solve(frequency_hz);
+                vec![solved.map(|()| batch::row(circuit, engine, frequency_hz, &varied))]
+            }
+        };
+        for outcome in outcomes {
+            if emit(outcome)?.is_break() {
+                return Ok(ControlFlow::Break(()));
+            }
         }
     }
+    if let Some(batches) = &batches {
+        return Ok(sink(Event::Tally(&batches.tally())));
+    }
     Ok(ControlFlow::Continue(()))
+}
+
+/// Sweeps of fewer frequencies above zero than this are solved one by one.
+const FEWEST_FOR_LANES: usize = 4;
+
+/// The batches of a sweep, planned at the middle of its band (by ratio); `None` where frequencies
+/// are better solved one by one.
+fn batches<'c>(
+    circuit: &'c Circuit,
+    frequencies_hz: &[f64],
+) -> Result<Option<Batches<'c>>, StudyError> {
+    let above = || frequencies_hz.iter().copied().filter(|f| *f > 0.0);
+    if above().count() < FEWEST_FOR_LANES {
+        return Ok(None);
+    }
+    let (low, high) = (above().fold(f64::INFINITY, f64::min), above().fold(0.0, f64::max));
+    let middle_hz = low.sqrt() * high.sqrt();
+    Batches::new(circuit, || Engine::new(circuit, Regime::Alternating), middle_hz)
 }

@@ -15,6 +15,7 @@
 mod dense;
 mod dispatch;
 mod eliminate;
+mod exact;
 mod fronts;
 mod judge;
 mod lane;
@@ -32,6 +33,7 @@ pub use crate::solve::lanes::values::Equations;
 
 use crate::solve::Pattern;
 use crate::solve::lanes::dispatch::dispatch;
+use crate::solve::lanes::exact::ExactValues;
 use crate::solve::lanes::fronts::{Columns, FrontPlan};
 use crate::solve::lanes::rows::RowPlan;
 use crate::solve::lanes::values::{Driven, Entries, Listing};
@@ -75,6 +77,8 @@ pub enum PlanError {
 pub struct Uses {
     /// Further right-hand sides, or transposed ones, will be solved on the same factors.
     pub further_solves: bool,
+    /// [`Plan::refine`] will be used.
+    pub refine: bool,
     /// Number of lanes, 8 or 16, if it is not to be chosen.
     pub lanes: Option<usize>,
     /// Instructions, if they are not to be chosen.
@@ -143,6 +147,9 @@ struct Buffers<const W: usize> {
     driven: Driven,
     frequency: [f64; W],
     extras: Vec<Lane<W>>,
+    /// What was rounded off the further values.
+    extras_low: Vec<Lane<W>>,
+    exact: ExactValues,
     factors: Vec<Lane<W>>,
     /// The block at work.
     dense: Vec<Lane<W>>,
@@ -157,6 +164,8 @@ struct Buffers<const W: usize> {
     /// Solutions before a correction.
     before: Vec<Lane<W>>,
     backward: [f64; W],
+    /// Largest correction relative to its unknown.
+    contraction: [f64; W],
 }
 
 #[derive(Clone, Debug)]
@@ -211,7 +220,7 @@ impl Plan {
         let found = pivots::find(*n, column_start, row, &values)
             .map_err(|none| PlanError::Singular { column: none.column })?;
         // Beside a dense block the multipliers of the sparse rows cost next to nothing.
-        let keeps = uses.further_solves || !found.dense_rows.is_empty();
+        let keeps = uses.refine || uses.further_solves || !found.dense_rows.is_empty();
         let rows = RowPlan::new(*n, column_start, row, &found, keeps);
         let small = rows.storage * size_of::<Lane<16>>() <= SIXTEEN_LANES_BYTES;
         let lanes = match uses.lanes {
@@ -276,12 +285,18 @@ impl Plan {
         Workspace { width, n: self.n, sides, verdicts }
     }
 
+    /// One right-hand side, and factors that stay.
+    fn can_refine(&self) -> bool {
+        self.shape.keeps_factors()
+    }
+
     fn buffers<const W: usize>(
         &self,
         equations: &Equations,
         entries: Entries,
         driven: Driven,
     ) -> Buffers<W> {
+        let listing = self.shape.listing();
         let (factors, block, waiting, front_slots): (_, _, _, &[u32]) = match &self.shape {
             Shape::Rows(rows) => (rows.storage, rows.dense.area(), 0, &[]),
             Shape::Fronts(fronts) => {
@@ -292,6 +307,12 @@ impl Plan {
         Buffers {
             frequency: [0.0; W],
             extras: room(equations.extras()),
+            extras_low: room(equations.extras()),
+            exact: if self.can_refine() {
+                ExactValues::new(listing, equations)
+            } else {
+                ExactValues::default()
+            },
             factors: room(factors),
             dense: room(block),
             waiting: room(waiting),
@@ -301,6 +322,7 @@ impl Plan {
             solution: room(self.n * driven.sides),
             before: room(if self.shape.keeps_factors() { self.n * driven.sides } else { 0 }),
             backward: [f64::INFINITY; W],
+            contraction: [f64::INFINITY; W],
             entries,
             driven,
         }
@@ -321,6 +343,16 @@ impl Plan {
             }
         });
         &workspace.verdicts[..used]
+    }
+
+    /// After [`Plan::run`]: corrects every lane once with a residual in twice the working
+    /// precision (Demmel and others, 2006). The solution is then [`Workspace::refined`]. The plan
+    /// must have been made for further solves and have one right-hand side.
+    pub fn refine(&self, workspace: &mut Workspace) {
+        assert!(self.can_refine() && workspace.sides == 1, "a plan whose factors stay");
+        either!(&mut workspace.width, buffers => {
+            dispatch(self.instructions, self, buffers, Job::Refine);
+        });
     }
 
     /// Solves further right-hand sides, set by [`Workspace::set_right`], on the factors of the
@@ -375,6 +407,23 @@ impl Workspace {
     /// Sets a further value of one lane, numbered as [`Equations::extras`] says.
     pub fn set_extra(&mut self, which: usize, lane: usize, value: Complex64) {
         either!(&mut self.width, buffers => buffers.extras[which].set(lane, value));
+    }
+
+    /// The rounded-off part of a further value of one lane.
+    pub fn set_extra_low(&mut self, which: usize, lane: usize, value: Complex64) {
+        either!(&mut self.width, buffers => buffers.extras_low[which].set(lane, value));
+    }
+
+    /// After [`Plan::refine`]: the largest correction of an unknown relative to it, in one lane.
+    pub fn contraction(&self, lane: usize) -> f64 {
+        either!(&self.width, buffers => buffers.contraction[lane])
+    }
+
+    /// After [`Plan::refine`]: the solution of one unknown in one lane, and its correction.
+    pub fn refined(&self, unknown: usize, lane: usize) -> (Complex64, Complex64) {
+        either!(&self.width, buffers => {
+            (buffers.before[unknown].get(lane), buffers.solution[unknown].get(lane))
+        })
     }
 
     /// The solution of one unknown in one lane for the first right-hand side.

@@ -1,7 +1,7 @@
 //! The jobs a plan does, each compiled once for every width of vectors.
 
 use crate::solve::lanes::{
-    Buffers, GOOD_BACKWARD_ERROR, Plan, Shape, eliminate, judge, multifrontal,
+    Buffers, GOOD_BACKWARD_ERROR, Plan, Shape, eliminate, exact, judge, multifrontal,
 };
 
 /// Corrections a lane may get. One makes an elimination with bearable pivots as good as a
@@ -13,6 +13,8 @@ const REFINEMENTS: usize = 2;
 pub(super) enum Job {
     /// Values, factors, solutions, judgement.
     Run,
+    /// One correction with a residual in twice the precision.
+    Refine,
     /// Other right-hand sides on the factors that stand.
     Solve,
     /// The same with the matrix transposed.
@@ -26,6 +28,12 @@ pub(super) fn work<const W: usize, const V: usize, const FMA: bool>(
     buffers: &mut Buffers<W>,
     job: Job,
 ) {
+    if job == Job::Refine {
+        buffers.before.copy_from_slice(&buffers.solution);
+        exact::residual(plan.shape.listing(), buffers);
+        solve::<W, V, FMA>(plan, buffers, true);
+        return judge::contraction(buffers);
+    }
     let again = job != Job::Run;
     if job == Job::SolveTransposed {
         if let Shape::Rows(rows) = &plan.shape {
