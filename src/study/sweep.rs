@@ -3,7 +3,9 @@
 use crate::circuit::island::Regime;
 use crate::circuit::program::Program;
 use crate::circuit::{Circuit, Read};
+use crate::diag::Diagnostic;
 use crate::quantity::Dimension;
+use crate::study::adaptive::Resonance;
 use crate::study::engine::Engine;
 use crate::study::point::{missed, regime_of};
 use crate::study::{StudyError, SweepHead, SweepRow, Value};
@@ -51,13 +53,54 @@ pub enum Event<'e> {
     Head(&'e SweepHead),
     /// One frequency.
     Row(&'e SweepRow),
+    /// The row that follows has no values: there is no solution at its frequency.
+    Unsolved {
+        /// In hertz.
+        frequency_hz: f64,
+        /// Why, in circuit words.
+        why: &'e [Diagnostic],
+    },
+    /// After the rows it shows in: a resonance that a refined sweep came upon.
+    Resonance(&'e Resonance),
+    /// A refined sweep ended at its limit of rows before every line was straight enough.
+    Full {
+        /// How many there are.
+        rows: usize,
+    },
 }
 
-/// Sweeps a circuit and hands each row to `sink`, which may stop the sweep.
+/// Sweeps one circuit, with the values of its varied parameters.
+pub(crate) type SweepOne<'s> = dyn FnMut(
+        &Circuit,
+        Vec<f64>,
+        &mut dyn FnMut(Event) -> ControlFlow<()>,
+    ) -> Result<ControlFlow<()>, StudyError>
+    + 's;
+
+/// Sweeps a circuit and hands each row to `sink`, which may stop the sweep. A frequency without a
+/// solution does not end the sweep: its row has no values.
+///
+/// # Errors
+/// What is wrong with the circuit at any frequency, and what keeps it from having a solution at
+/// all of them.
 pub fn run(
     program: &mut Program,
     plan: &Plan,
     sink: &mut dyn FnMut(Event) -> ControlFlow<()>,
+) -> Result<(), StudyError> {
+    let rows = plan.frequencies_hz.len();
+    each_combination(program, plan, rows, sink, &mut |circuit, varied, sink| {
+        sweep_one(circuit, plan, varied, sink)
+    })
+}
+
+/// Calls `one` for every combination of varied parameters, after the head with `rows` for each.
+pub(crate) fn each_combination(
+    program: &mut Program,
+    plan: &Plan,
+    rows: usize,
+    sink: &mut dyn FnMut(Event) -> ControlFlow<()>,
+    one: &mut SweepOne,
 ) -> Result<(), StudyError> {
     let combinations = plan.vary.iter().map(|v| v.count).product::<usize>();
     let mut headed = false;
@@ -75,19 +118,19 @@ pub fn run(
         let circuit = circuit.ok_or(StudyError::Refused(found))?;
         if !headed {
             headed = true;
-            let head = head(&circuit, plan, combinations);
+            let head = head(&circuit, plan, combinations * rows);
             if sink(Event::Head(&head)).is_break() {
                 return Ok(());
             }
         }
-        if sweep_one(&circuit, plan, varied, sink)?.is_break() {
+        if one(&circuit, varied, sink)?.is_break() {
             return Ok(());
         }
     }
     Ok(())
 }
 
-fn head(circuit: &Circuit, plan: &Plan, combinations: usize) -> SweepHead {
+fn head(circuit: &Circuit, plan: &Plan, rows: usize) -> SweepHead {
     let read = |read: &Read| {
         let formula = circuit.tape.get(read.value);
         (read.name.clone(), formula.dimension, formula.real)
@@ -95,7 +138,7 @@ fn head(circuit: &Circuit, plan: &Plan, combinations: usize) -> SweepHead {
     SweepHead {
         varied: plan.vary.iter().map(|v| (v.name.clone(), v.dimension)).collect(),
         readings: circuit.reads.iter().map(read).collect(),
-        rows: combinations * plan.frequencies_hz.len(),
+        rows,
     }
 }
 
@@ -120,8 +163,20 @@ fn sweep_one(
             Some(engine) => engine,
             None => slot.insert(Engine::new(circuit, regime)?),
         };
-        engine.solve(frequency_hz)?;
         row.frequency_hz = frequency_hz;
+        match engine.solve(frequency_hz) {
+            Ok(()) => {}
+            Err(StudyError::NoSolution(why)) => {
+                row.values.fill(undetermined);
+                row.missed.fill(false);
+                let said = sink(Event::Unsolved { frequency_hz, why: &why });
+                if said.is_break() || sink(Event::Row(&row)).is_break() {
+                    return Ok(ControlFlow::Break(()));
+                }
+                continue;
+            }
+            Err(refused) => return Err(refused),
+        }
         for (i, read) in circuit.reads.iter().enumerate() {
             let value = engine.value(read.value).map_or(undetermined, Value::from);
             row.values[i] = value;

@@ -5,6 +5,7 @@
 //! - `examples`: circuits of the scenario and of the docs
 //! - `compare`: two circuits across a band against closed forms
 //! - `prove`: circuits proved identical, told apart, or called undecided
+//! - `refine`: sweeps whose points are chosen by the response
 //! - `reference`: published values from outside the project
 //! - `swap`: circuits with their couplings replaced
 //! - `tidy`: rules of the house
@@ -16,6 +17,7 @@ mod exact;
 mod examples;
 mod prove;
 mod reference;
+mod refine;
 mod support;
 mod swap;
 mod tidy;
