@@ -51,7 +51,7 @@ fn swept_as(text: &str, frequencies_hz: Vec<f64>, refine: Option<Refine>) -> Swe
 
 #[track_caller]
 fn refined(text: &str, from_hz: f64, to_hz: f64) -> Swept {
-    let frequencies_hz = band(from_hz, to_hz, Spacing::PerDecade(4)).expect("a band");
+    let frequencies_hz = band(from_hz, to_hz, Spacing::PerDecade(2)).expect("a band");
     let swept = swept_as(text, frequencies_hz, Some(USUAL));
     assert!(swept.rows.windows(2).all(|w| w[0].frequency_hz < w[1].frequency_hz));
     let ends = (swept.rows[0].frequency_hz, swept.rows[swept.rows.len() - 1].frequency_hz);
@@ -138,7 +138,7 @@ fn a_resonance_of_q_100_000_is_found_in_four_decades() {
         let [resonance] = &swept.resonances[..] else { panic!("{:?}", swept.resonances) };
         assert!((resonance.q / 1e5 - 1.0).abs() < 1e-4, "{resonance:?}");
         lines_hold(&text, &swept, Axis::Logarithmic, 1e-3, 2000);
-        assert!(swept.rows.len() < 600, "{}", swept.rows.len());
+        assert!(swept.rows.len() < 700, "{}", swept.rows.len());
     }
 }
 
@@ -212,7 +212,7 @@ const LADDER: &str = "let R = 50 Ω
 fn a_ladder_with_ripple_and_readings_that_are_not_rational() {
     let swept = refined(LADDER, 1e4, 1e8);
     lines_hold(LADDER, &swept, Axis::Logarithmic, 1e-3, 2000);
-    assert!(swept.rows.len() < 1200, "{}", swept.rows.len());
+    assert!(swept.rows.len() < 800, "{}", swept.rows.len());
     // The ripple's tops and bottoms are rows: the bottoms lie 0.5 dB below the tops.
     let level = |row: &SweepRow| row.values[1].value.re;
     let inside: Vec<_> = swept.rows.iter().filter(|row| row.frequency_hz < 0.99e6).collect();
@@ -251,7 +251,7 @@ fn a_linear_band_is_refined_over_the_frequency_itself() {
     assert!((height / expected - 1.0).abs() < 1e-9, "{height} {expected}");
     let above = Swept { rows: swept.rows[1..].to_vec(), ..swept };
     lines_hold(&text, &above, Axis::Linear, 1e-2, 1000);
-    assert!(above.rows.len() < 200, "{}", above.rows.len());
+    assert!(above.rows.len() < 250, "{}", above.rows.len());
 }
 
 #[test]
@@ -269,15 +269,15 @@ fn values_that_follow_a_root_of_the_frequency_are_followed() {
 #[test]
 fn the_number_of_rows_has_a_limit() {
     let refine = Refine { most: 60, ..USUAL };
-    let points = band(1e3, 1e7, Spacing::PerDecade(4)).expect("a band");
+    let points = band(1e3, 1e7, Spacing::PerDecade(2)).expect("a band");
     let swept = swept_as(&series(123_456.0, 1e5), points, Some(refine));
     assert!(swept.full);
     assert_eq!(swept.rows.len(), 60);
 }
 
 /// Natural frequency 1/(2π√(L·C)) with √(L·C) = 1/(2π·1 kHz), without any loss.
-const TANK: &str = "gnd -(> drive: 1 A )- top -( coil: 1/(2*pi) mH )- gnd
-    top -( tune: 1/(2*pi) mF )- gnd
+const TANK: &str = "gnd -(> drive: 1 A )- top -( coil: 1 mH/(2*pi) )- gnd
+    top -( tune: 1 mF/(2*pi) )- gnd
     read top = volts(top)";
 
 #[test]

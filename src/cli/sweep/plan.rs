@@ -11,7 +11,7 @@ use crate::study::grid::MOST_POINTS;
 use crate::study::sweep::{Plan, Vary};
 
 /// Points in a decade that a refined sweep starts from.
-const COARSE_PER_DECADE: usize = 4;
+const COARSE_PER_DECADE: usize = 2;
 
 /// `name=a..b:n` as typed.
 #[derive(Clone, Debug, PartialEq, Eq)]

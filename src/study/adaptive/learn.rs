@@ -2,7 +2,7 @@
 
 use crate::study::StudyError;
 use crate::study::adaptive::Axis;
-use crate::study::adaptive::model::{Model, Pole};
+use crate::study::adaptive::model::{Known, LOSSLESS_GAP, Model, Pole};
 use crate::study::adaptive::sampler::Sampler;
 
 /// Supports of one model; a response that needs more is modelled in parts.
@@ -21,12 +21,6 @@ const MOST_HALVINGS: usize = 7;
 /// makes up the part p of a response shows off resonance as p/(2Q) of it, so this finds Q = 10⁵
 /// wherever it makes up a few parts in ten thousand.
 const PREDICTS: f64 = 1e-9;
-
-/// Half widths below this part of the frequency are none: Q above 10¹⁰.
-pub const LOSSLESS: f64 = 0.5e-10;
-
-/// Around a resonance without loss nothing nearer than this part of its frequency is resolved.
-pub const LOSSLESS_GAP: f64 = 1e-6;
 
 /// A part of the band with its model.
 pub struct Part {
@@ -56,23 +50,23 @@ impl Learned {
 
     /// True where nothing more is resolved: next to a resonance without loss.
     pub fn unbounded(&self, low_hz: f64, high_hz: f64) -> bool {
-        self.poles.iter().filter(|pole| is_lossless(pole)).any(|pole| {
+        self.poles.iter().filter(|pole| pole.is_lossless()).any(|pole| {
             let top = pole.frequency_hz();
             let gap = 1.01 * LOSSLESS_GAP * top;
             low_hz >= top - gap && high_hz <= top + gap
         })
     }
-}
 
-/// No loss can be told.
-pub fn is_lossless(pole: &Pole) -> bool {
-    pole.half_width_hz() <= LOSSLESS * pole.frequency_hz()
+    /// A frequency that nothing is to be solved at, for the same reason.
+    pub fn forbidden(&self, frequency_hz: f64) -> bool {
+        self.unbounded(frequency_hz, frequency_hz)
+    }
 }
 
 /// The frequencies where a resonance must be solved: its top and its flanks at half power.
 fn places(pole: &Pole) -> Vec<f64> {
     let top = pole.frequency_hz();
-    if is_lossless(pole) {
+    if pole.is_lossless() {
         return vec![top * (1.0 - LOSSLESS_GAP), top * (1.0 + LOSSLESS_GAP)];
     }
     let half = pole.half_width_hz();
@@ -117,15 +111,13 @@ fn settle(
     (low_hz, high_hz): (f64, f64),
     tolerance: f64,
 ) -> Result<Option<Model>, StudyError> {
-    // Resonances just outside shape the response inside.
-    let widest = |samples: &[f64], count: usize| widest_gaps(axis, samples, count);
     loop {
         let have: Vec<f64> =
             sampler.known(low_hz, high_hz).iter().map(|k| k.frequency_hz).collect();
         if have.len() >= FIRST_SAMPLES {
             break;
         }
-        let more = widest(&have, FIRST_SAMPLES - have.len());
+        let more = widest_gaps(sampler, axis, &have, FIRST_SAMPLES - have.len());
         if have.len() < 2 || more.is_empty() || !take_all(sampler, &more)? {
             return Ok(None);
         }
@@ -150,7 +142,7 @@ fn settle(
             false => Vec::new(),
         };
         let count = if fits { 2 } else { (have.len() / 3).max(3) };
-        let gaps = doubtful(axis, &have, &model, before.as_ref(), count);
+        let gaps = doubtful(sampler, axis, &have, &model, before.as_ref(), count);
         if gaps.is_empty() {
             return Ok(fits.then_some(model));
         }
@@ -167,7 +159,7 @@ fn settle(
     }
 }
 
-fn largest(known: &[crate::study::adaptive::model::Known]) -> Vec<f64> {
+fn largest(known: &[Known]) -> Vec<f64> {
     let count = known.first().map_or(0, |k| k.phasors.len());
     (0..count).map(|q| known.iter().map(|k| k.phasors[q].norm()).fold(0.0, f64::max)).collect()
 }
@@ -208,11 +200,16 @@ fn unsolved_places(
 }
 
 /// Middles of the widest gaps.
-fn widest_gaps(axis: Axis, have: &[f64], count: usize) -> Vec<f64> {
+fn widest_gaps(sampler: &Sampler, axis: Axis, have: &[f64], count: usize) -> Vec<f64> {
+    let new = |f: &f64| sampler.distance_hz(*f) > 0.0;
     let mut gaps: Vec<(f64, f64)> = have
         .windows(2)
-        .map(|w| (axis.place(w[1]) - axis.place(w[0]), axis.between(w[0], w[1], 0.5)))
-        .filter(|(_, middle)| !have.contains(middle))
+        .filter_map(|w| {
+            // A frequency without a solution may stand in the middle.
+            let tried = [0.5, 0.4].map(|part| axis.between(w[0], w[1], part));
+            let middle = tried.into_iter().find(new)?;
+            Some((axis.place(w[1]) - axis.place(w[0]), middle))
+        })
         .collect();
     gaps.sort_by(|a, b| b.0.total_cmp(&a.0));
     gaps.into_iter().take(count).map(|(_, middle)| middle).collect()
@@ -221,13 +218,14 @@ fn widest_gaps(axis: Axis, have: &[f64], count: usize) -> Vec<f64> {
 /// Where two models disagree most, one place a gap between samples; without a second model, the
 /// widest gaps. At least one widest gap is among them.
 fn doubtful(
+    sampler: &Sampler,
     axis: Axis,
     have: &[f64],
     model: &Model,
     before: Option<&Model>,
     count: usize,
 ) -> Vec<f64> {
-    let Some(before) = before else { return widest_gaps(axis, have, count) };
+    let Some(before) = before else { return widest_gaps(sampler, axis, have, count) };
     let mut gaps: Vec<(f64, f64)> = Vec::new();
     for pair in have.windows(2) {
         let tried = [0.25, 0.5, 0.75].map(|t| {
@@ -240,11 +238,11 @@ fn doubtful(
             (differ.fold(0.0, f64::max), f)
         });
         let worst = tried.into_iter().max_by(|a, b| a.0.total_cmp(&b.0));
-        gaps.extend(worst.filter(|(_, f)| pair[0] < *f && *f < pair[1]));
+        gaps.extend(worst.filter(|(_, f)| sampler.distance_hz(*f) > 0.0));
     }
     gaps.sort_by(|a, b| b.0.total_cmp(&a.0));
     let mut found: Vec<f64> = gaps.into_iter().take(count.max(2) - 1).map(|(_, f)| f).collect();
-    let wide = widest_gaps(axis, have, 1);
+    let wide = widest_gaps(sampler, axis, have, 1);
     found.extend(wide.into_iter().filter(|f| !found.contains(f)).collect::<Vec<_>>());
     found
 }

@@ -9,6 +9,7 @@
 //! Every frequency solved becomes a row.
 
 mod learn;
+mod march;
 mod model;
 mod peaks;
 mod place;
@@ -16,7 +17,6 @@ mod sampler;
 
 use crate::circuit::Circuit;
 use crate::circuit::program::Program;
-use crate::study::adaptive::learn::is_lossless;
 use crate::study::adaptive::sampler::{Sample, Sampler};
 use crate::study::sweep::{self, Event, Plan};
 use crate::study::{StudyError, SweepRow};
@@ -118,7 +118,7 @@ fn refine_one(
         place::place(circuit, &mut sampler, &learned, refine.axis, refine)?;
         peaks::crown(circuit, &mut sampler, &learned)?;
         for pole in &learned.poles {
-            let lossless = is_lossless(pole);
+            let lossless = pole.is_lossless();
             let frequency_hz = pole.frequency_hz();
             if lossless {
                 sampler.take(frequency_hz)?;

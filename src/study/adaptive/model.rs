@@ -16,6 +16,12 @@ const NOTHING: f64 = 1e-12;
 /// Samples that a fit leaves over to be judged by.
 const SPARE: usize = 3;
 
+/// Half widths below this part of the frequency are none: Q above 10¹⁰.
+pub const LOSSLESS: f64 = 0.5e-10;
+
+/// Around a resonance without loss nothing nearer than this part of its frequency is resolved.
+pub const LOSSLESS_GAP: f64 = 1e-6;
+
 /// A solved frequency.
 #[derive(Clone, Copy, Debug)]
 pub struct Known<'s> {
@@ -30,8 +36,6 @@ pub struct Known<'s> {
 pub struct Pole {
     /// Complex frequency in hertz.
     pub at: Complex64,
-    /// How much of the response at its peak is due to it, as a part of the phasor it shows best in.
-    pub part: f64,
 }
 
 impl Pole {
@@ -43,6 +47,11 @@ impl Pole {
     /// Half the width of the resonance at half power, in hertz.
     pub fn half_width_hz(&self) -> f64 {
         self.at.im.abs()
+    }
+
+    /// No loss can be told.
+    pub fn is_lossless(&self) -> bool {
+        self.half_width_hz() <= LOSSLESS * self.frequency_hz()
     }
 
     /// The quality factor.
@@ -277,20 +286,20 @@ impl Model {
     /// The poles that make a resonance between two frequencies in hertz, ascending, each with at
     /// least `least_part` of some phasor.
     pub fn poles(&self, from_hz: f64, to_hz: f64, least_part: f64) -> Vec<Pole> {
-        /// Half a width below this part of the frequency is not told from none.
-        const NO_WIDTH: f64 = 1e-13;
+        // What is smaller than this is made of rounding.
+        let noise = 10.0 * self.misfit.max(10.0 * FULL_PRECISION);
         let mut found = Vec::new();
         for (at, residue) in self.all_poles() {
             let top = at.norm();
             if !(from_hz..=to_hz).contains(&top) || at.im.abs() > 0.5 * at.re {
                 continue;
             }
-            let half = at.im.abs().max(NO_WIDTH * top);
+            let half = if at.im.abs() > LOSSLESS * top { at.im.abs() } else { LOSSLESS_GAP * top };
             let near = self.at(top + half);
             let parts = residue.iter().zip(&near).filter(|(_, near)| near.norm() > 0.0);
             let part = parts.map(|(r, near)| r.norm() / half / near.norm()).fold(0.0, f64::max);
-            if part >= least_part {
-                found.push(Pole { at, part });
+            if part >= least_part && part * half >= noise * top {
+                found.push(Pole { at });
             }
         }
         found.sort_by(|a, b| a.frequency_hz().total_cmp(&b.frequency_hz()));

@@ -3,7 +3,7 @@
 use crate::circuit::Circuit;
 use crate::study::adaptive::learn::Learned;
 use crate::study::adaptive::sampler::Sampler;
-use crate::study::adaptive::{Axis, Refine};
+use crate::study::adaptive::{Axis, Refine, march};
 use crate::study::{StudyError, Value};
 use num_complex::Complex64;
 use std::cmp::Ordering;
@@ -17,7 +17,10 @@ const LEAST_PART: f64 = 1e-12;
 const CLOSEST: f64 = 1e-13;
 
 /// The part of the tolerance that an interval may use.
-const SHARE: f64 = 0.75;
+const SHARE: f64 = 0.9;
+
+/// The part of the tolerance that intervals are cut for.
+const TARGET: f64 = 0.8;
 
 /// The part of the tolerance that a model may be off before it is no longer asked.
 const MODEL_SHARE: f64 = 0.1;
@@ -31,7 +34,6 @@ struct Open {
     error: f64,
     low: usize,
     high: usize,
-    pieces: usize,
     /// Judged by solving its middle instead of asking the model.
     by_truth: bool,
 }
@@ -115,20 +117,15 @@ impl Place<'_, '_> {
         let by_truth = by_truth || !asks_nobody && self.learned.model(low_hz, high_hz).is_none();
         if by_truth {
             let error = f64::INFINITY;
-            self.open.push(Open { error, low, high, pieces: 2, by_truth });
+            self.open.push(Open { error, low, high, by_truth });
             return;
         }
-        let errors = TESTED.map(|part| {
-            let frequency_hz = self.axis.between(low_hz, high_hz, part);
-            let found = self.predicted(low_hz, high_hz, frequency_hz);
-            self.error(low, high, part, &found, None)
-        });
-        let error = errors.into_iter().fold(0.0, f64::max);
+        let ends = [low, high].map(|number| self.sampler.get(number).values.clone());
+        let error = self.tested((low_hz, high_hz), [0.0, 1.0], &ends);
         if error <= SHARE {
             return;
         }
-        let pieces = pieces(errors);
-        self.open.push(Open { error, low, high, pieces, by_truth });
+        self.open.push(Open { error, low, high, by_truth });
     }
 
     fn predicted(&mut self, low_hz: f64, high_hz: f64, frequency_hz: f64) -> Vec<Complex64> {
@@ -136,19 +133,33 @@ impl Place<'_, '_> {
         self.sampler.predict(learned.model(low_hz, high_hz), frequency_hz)
     }
 
+    /// What a model tells about the error of the line between two parts of an interval, with these
+    /// readings at its ends.
+    fn tested(
+        &mut self,
+        (low_hz, high_hz): (f64, f64),
+        [from, to]: [f64; 2],
+        ends: &[Vec<Value>; 2],
+    ) -> f64 {
+        let errors = TESTED.map(|part| {
+            let frequency_hz = self.axis.between(low_hz, high_hz, from + part * (to - from));
+            let found = self.predicted(low_hz, high_hz, frequency_hz);
+            self.error(ends, part, &found, None)
+        });
+        errors.into_iter().fold(0.0, f64::max)
+    }
+
     /// The worst error of the straight line at a part of the way, over what is allowed.
     fn error(
         &self,
-        low: usize,
-        high: usize,
+        [low, high]: &[Vec<Value>; 2],
         part: f64,
         found: &[Complex64],
         bounds: Option<&[Value]>,
     ) -> f64 {
-        let (low, high) = (self.sampler.get(low), self.sampler.get(high));
         let mut worst = 0.0f64;
         for (i, found) in found.iter().enumerate() {
-            let (a, b) = (low.values[i], high.values[i]);
+            let (a, b) = (low[i], high[i]);
             let defined = [a.value, b.value, *found].map(|v| v.is_finite());
             match defined {
                 [true, true, true] => {}
@@ -171,16 +182,42 @@ impl Place<'_, '_> {
         worst
     }
 
+    /// Where the model would cut an interval, as parts of its length.
+    fn cuts(&mut self, interval: &Open) -> Vec<f64> {
+        let (low_hz, high_hz) = self.ends(interval.low, interval.high);
+        let mut known: [(f64, Vec<Value>); 2] = [
+            (0.0, self.sampler.get(interval.low).values.clone()),
+            (1.0, self.sampler.get(interval.high).values.clone()),
+        ];
+        let guess = (TARGET / interval.error).sqrt();
+        march::cuts(guess, TARGET, &mut |from, to| {
+            let ends = [from, to].map(|part| {
+                if let Some((_, values)) = known.iter().find(|(known, _)| *known == part) {
+                    return values.clone();
+                }
+                let frequency_hz = self.axis.between(low_hz, high_hz, part);
+                let found = self.predicted(low_hz, high_hz, frequency_hz);
+                found.into_iter().map(|value| Value { value, error: 0.0 }).collect()
+            });
+            // The low end is asked for again and again.
+            if known[0].0 != from {
+                known[0] = (from, ends[0].clone());
+            }
+            self.tested((low_hz, high_hz), [from, to], &ends)
+        })
+    }
+
     /// Solves between the pieces of an interval and compares with the model. False where no more
     /// can be solved.
     fn divide(&mut self, interval: &Open) -> Result<bool, StudyError> {
         let (low_hz, high_hz) = self.ends(interval.low, interval.high);
         let mut numbers = vec![interval.low];
         let mut by_truth = false;
-        for i in 1..interval.pieces {
-            let part = i as f64 / interval.pieces as f64;
+        for part in self.cuts(interval) {
             let frequency_hz = self.axis.between(low_hz, high_hz, part);
-            if !(low_hz < frequency_hz && frequency_hz < high_hz) {
+            if !(low_hz < frequency_hz && frequency_hz < high_hz)
+                || self.learned.forbidden(frequency_hz)
+            {
                 continue;
             }
             let predicted = self.predicted(low_hz, high_hz, frequency_hz);
@@ -189,9 +226,11 @@ impl Place<'_, '_> {
             numbers.push(number);
         }
         numbers.push(interval.high);
-        if numbers.len() > 2 {
-            numbers.windows(2).for_each(|pair| self.judge(pair[0], pair[1], by_truth));
+        if numbers.len() == 2 {
+            // The model sees no place to cut, so the truth has to tell.
+            by_truth = true;
         }
+        numbers.windows(2).for_each(|pair| self.judge(pair[0], pair[1], by_truth));
         Ok(true)
     }
 
@@ -225,30 +264,17 @@ impl Place<'_, '_> {
         let Some(middle) = self.sampler.take(middle_hz)? else { return Ok(false) };
         let truth = self.sampler.get(middle).values.clone();
         let found: Vec<Complex64> = truth.iter().map(|v| v.value).collect();
-        let error = self.error(interval.low, interval.high, 0.5, &found, Some(&truth));
+        let ends =
+            [interval.low, interval.high].map(|number| self.sampler.get(number).values.clone());
+        let error = self.error(&ends, 0.5, &found, Some(&truth));
         // One place may hide what the others would show, so the halves keep a wide margin.
         if error > 0.25 * SHARE {
             for (low, high) in [(interval.low, middle), (middle, interval.high)] {
                 if !self.closed(low, high) {
-                    self.open.push(Open { error, low, high, pieces: 2, by_truth: true });
+                    self.open.push(Open { error, low, high, by_truth: true });
                 }
             }
         }
         Ok(true)
-    }
-}
-
-/// Into how many equal pieces an interval is best cut, by its errors at a quarter, half and three
-/// quarters of the way.
-fn pieces([quarter, half, last]: [f64; 3]) -> usize {
-    /// More pieces at once than this trust the curvature too far.
-    const MOST: f64 = 6.0;
-    let error = quarter.max(half).max(last);
-    // A parabola has three quarters of its middle error at the quarters.
-    let even = |e: f64| (0.6..0.9).contains(&(e / half));
-    let wanted = (error / SHARE).sqrt().ceil();
-    match even(quarter) && even(last) {
-        true => wanted.clamp(2.0, MOST) as usize,
-        false => 2,
     }
 }
