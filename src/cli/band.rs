@@ -7,7 +7,7 @@ use crate::study::grid::{self, GridError, Spacing};
 use clap::Args;
 
 /// Points in a decade where nothing else is said.
-const USUAL_PER_DECADE: usize = 100;
+pub const USUAL_PER_DECADE: usize = 100;
 
 /// A band or a list, as typed.
 #[derive(Args, Debug)]
@@ -72,8 +72,8 @@ fn grid_error(error: GridError, option: &str) -> Diagnostic {
     }
 }
 
-/// The frequencies in hertz.
-pub fn frequencies(typed: &BandArgs, common: &mut Common) -> Result<Vec<f64>, Stop> {
+/// The frequencies in hertz; `usual` points in a decade where no number was typed.
+pub fn frequencies(typed: &BandArgs, usual: usize, common: &mut Common) -> Result<Vec<f64>, Stop> {
     if let Some(list) = &typed.at {
         let texts = items(list);
         if texts.iter().any(|text| text.is_empty()) {
@@ -90,7 +90,7 @@ pub fn frequencies(typed: &BandArgs, common: &mut Common) -> Result<Vec<f64>, St
     let spacing = match (typed.points, typed.linear) {
         (Some(points), true) => Spacing::Linear(points),
         (Some(points), false) => Spacing::Logarithmic(points),
-        (None, _) => Spacing::PerDecade(typed.per_decade.unwrap_or(USUAL_PER_DECADE)),
+        (None, _) => Spacing::PerDecade(typed.per_decade.unwrap_or(usual)),
     };
     let option = match spacing {
         Spacing::PerDecade(n) => format!("--from {from} --to {to} --per-decade {n}"),

@@ -74,7 +74,7 @@ pub fn run(typed: &CompareArgs) -> Result<Ending, Stop> {
     band::judge("compare", &typed.band).map_err(Stop::wrong)?;
     let mut common = typed.common.open()?;
     let plan = Plan {
-        frequencies_hz: band::frequencies(&typed.band, &mut common)?,
+        frequencies_hz: band::frequencies(&typed.band, band::USUAL_PER_DECADE, &mut common)?,
         band: typed.band.at.is_none(),
         within: typed.within,
     };

@@ -163,7 +163,10 @@ impl Render for Csv {
             let value = self.style.shown(*value, *dimension, row.frequency_hz).value;
             for column in self.columns(value, *dimension, *real) {
                 out.push(b',');
-                number(column, out);
+                // A row without a solution has empty cells.
+                if !value.is_nan() {
+                    number(column, out);
+                }
             }
         }
         out.push(b'\n');

@@ -4,6 +4,7 @@
 //! After the first couple of factorisations nothing is allocated.
 
 mod condition;
+pub mod dense;
 pub mod lanes;
 pub mod limits;
 mod lu;

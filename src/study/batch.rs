@@ -229,6 +229,22 @@ impl Job<'_> {
     }
 }
 
+/// The row of a frequency that has no solution.
+pub(crate) fn row_without_values(circuit: &Circuit, frequency_hz: f64, varied: &[f64]) -> SweepRow {
+    let reads = circuit.reads.len();
+    SweepRow {
+        varied: varied.to_vec(),
+        frequency_hz,
+        values: vec![undetermined(); reads],
+        missed: vec![false; reads],
+        highest_volts: 0.0,
+    }
+}
+
+fn undetermined() -> Value {
+    Value { value: Complex64::new(f64::NAN, f64::NAN), error: f64::INFINITY }
+}
+
 /// The row of a frequency that has been solved.
 pub(crate) fn row(
     circuit: &Circuit,
@@ -236,7 +252,6 @@ pub(crate) fn row(
     frequency_hz: f64,
     varied: &[f64],
 ) -> SweepRow {
-    let undetermined = Value { value: Complex64::new(f64::NAN, f64::NAN), error: f64::INFINITY };
     let mut row = SweepRow {
         varied: varied.to_vec(),
         frequency_hz,
@@ -245,7 +260,7 @@ pub(crate) fn row(
         highest_volts: engine.highest_volts(),
     };
     for read in &circuit.reads {
-        let value = engine.value(read.value).map_or(undetermined, Value::from);
+        let value = engine.value(read.value).map_or_else(|_| undetermined(), Value::from);
         row.values.push(value);
         row.missed.push(!read.limits.is_empty() && !missed(engine, read, value).is_empty());
     }

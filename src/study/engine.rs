@@ -1,5 +1,7 @@
 //! A circuit made ready to be solved at many frequencies.
 
+pub mod predict;
+
 use crate::circuit::island::Regime;
 use crate::circuit::{
     Circuit, Drive, ElementId, Fault, FormulaId, Law, Measure, NodeId, Operation, Phase, Values,

@@ -1,5 +1,6 @@
 //! Studies: a circuit and a question in, plain results out. Nothing here prints.
 
+pub mod adaptive;
 pub(crate) mod batch;
 pub mod compare;
 pub mod engine;
@@ -125,7 +126,7 @@ pub struct SweepHead {
     pub varied: Vec<(String, Dimension)>,
     /// Name, dimension and realness of every reading.
     pub readings: Vec<(String, Dimension, bool)>,
-    /// How many rows will come.
+    /// How many rows will come; 0 where only the sweep itself will tell.
     pub rows: usize,
 }
 

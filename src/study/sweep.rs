@@ -3,9 +3,11 @@
 use crate::circuit::island::Regime;
 use crate::circuit::program::Program;
 use crate::circuit::{Circuit, Read};
+use crate::diag::Diagnostic;
 use crate::quantity::Dimension;
+use crate::study::adaptive::Resonance;
 pub use crate::study::batch::Tally;
-use crate::study::batch::{self, Batches, Outcome};
+use crate::study::batch::{self, Batches};
 use crate::study::engine::Engine;
 use crate::study::point::regime_of;
 use crate::study::{StudyError, SweepHead, SweepRow};
@@ -54,17 +56,58 @@ pub enum Event<'e> {
     Row(&'e SweepRow),
     /// After the last row of a circuit: how its frequencies were solved, where it was in batches.
     Tally(&'e Tally),
+    /// The row that follows has no values: there is no solution at its frequency.
+    Unsolved {
+        /// In hertz.
+        frequency_hz: f64,
+        /// Why, in circuit words.
+        why: &'e [Diagnostic],
+    },
+    /// After the rows it shows in: a resonance that a refined sweep came upon.
+    Resonance(&'e Resonance),
+    /// A refined sweep ended at its limit of rows before every line was straight enough.
+    Full {
+        /// How many there are.
+        rows: usize,
+    },
 }
 
-/// Sweeps a circuit and hands each row to `sink`, which may stop the sweep.
+/// Sweeps one circuit, with the values of its varied parameters.
+pub(crate) type SweepOne<'s> = dyn FnMut(
+        &Circuit,
+        Vec<f64>,
+        &mut dyn FnMut(Event) -> ControlFlow<()>,
+    ) -> Result<ControlFlow<()>, StudyError>
+    + 's;
+
+/// Sweeps a circuit and hands each row to `sink`, which may stop the sweep. A frequency without a
+/// solution does not end the sweep: its row has no values.
+///
+/// # Errors
+/// What is wrong with the circuit at any frequency, and what keeps it from having a solution at
+/// all of them.
 pub fn run(
     program: &mut Program,
     plan: &Plan,
     sink: &mut dyn FnMut(Event) -> ControlFlow<()>,
 ) -> Result<(), StudyError> {
+    let rows = plan.frequencies_hz.len();
+    each_combination(program, plan, rows, sink, &mut |circuit, varied, sink| {
+        sweep_one(circuit, plan, varied, sink)
+    })
+}
+
+/// Calls `one` for every combination of varied parameters, after the head with `rows` for each.
+pub(crate) fn each_combination(
+    program: &mut Program,
+    plan: &Plan,
+    rows: usize,
+    sink: &mut dyn FnMut(Event) -> ControlFlow<()>,
+    one: &mut SweepOne,
+) -> Result<(), StudyError> {
     let combinations = plan.vary.iter().map(|v| v.count).product::<usize>();
     // Delivered with the first row, so that a circuit without any solution delivers nothing.
-    let mut headings = None;
+    let mut heading = None;
     for combination in 0..combinations {
         let mut varied = vec![0.0; plan.vary.len()];
         let mut rest = combination;
@@ -78,16 +121,23 @@ pub fn run(
         let (circuit, found) = program.circuit();
         let circuit = circuit.ok_or(StudyError::Refused(found))?;
         if combination == 0 {
-            headings = Some(head(&circuit, plan, combinations));
+            heading = Some(head(&circuit, plan, combinations * rows));
         }
-        if sweep_one(&circuit, plan, varied, &mut headings, sink)?.is_break() {
+        let mut headed = |event: Event| {
+            let first = matches!(event, Event::Row(_)).then(|| heading.take()).flatten();
+            if first.is_some_and(|head| sink(Event::Head(&head)).is_break()) {
+                return ControlFlow::Break(());
+            }
+            sink(event)
+        };
+        if one(&circuit, varied, &mut headed)?.is_break() {
             return Ok(());
         }
     }
     Ok(())
 }
 
-fn head(circuit: &Circuit, plan: &Plan, combinations: usize) -> SweepHead {
+fn head(circuit: &Circuit, plan: &Plan, rows: usize) -> SweepHead {
     let read = |read: &Read| {
         let formula = circuit.tape.get(read.value);
         (read.name.clone(), formula.dimension, formula.real)
@@ -95,7 +145,7 @@ fn head(circuit: &Circuit, plan: &Plan, combinations: usize) -> SweepHead {
     SweepHead {
         varied: plan.vary.iter().map(|v| (v.name.clone(), v.dimension)).collect(),
         readings: circuit.reads.iter().map(read).collect(),
-        rows: combinations * plan.frequencies_hz.len(),
+        rows,
     }
 }
 
@@ -103,30 +153,22 @@ fn sweep_one(
     circuit: &Circuit,
     plan: &Plan,
     varied: Vec<f64>,
-    headings: &mut Option<SweepHead>,
     sink: &mut dyn FnMut(Event) -> ControlFlow<()>,
 ) -> Result<ControlFlow<()>, StudyError> {
-    let mut emit = |outcome: Outcome| {
-        let row = outcome?;
-        let head = headings.take();
-        if head.is_some_and(|head| sink(Event::Head(&head)).is_break()) {
-            return Ok(ControlFlow::Break(()));
-        }
-        Ok(sink(Event::Row(&row)))
-    };
     let mut batches = batches(circuit, &plan.frequencies_hz)?;
     let mut engines: [Option<Engine>; 2] = [None, None];
     let mut rest = &plan.frequencies_hz[..];
     while let Some(&frequency_hz) = rest.first() {
-        let outcomes = match &mut batches {
+        let (now, outcomes) = match &mut batches {
             Some(batches) if frequency_hz > 0.0 => {
                 let zero = rest.iter().position(|f| *f == 0.0).unwrap_or(rest.len());
                 let (now, later) = rest.split_at(zero.min(batches.round()));
                 rest = later;
-                batches.rows(now, &varied)
+                (now, batches.rows(now, &varied))
             }
             _ => {
-                rest = &rest[1..];
+                let (now, later) = rest.split_at(1);
+                rest = later;
                 let regime = regime_of(frequency_hz);
                 let slot = &mut engines[usize::from(regime == Regime::Direct)];
                 let engine = match slot {
@@ -134,19 +176,30 @@ fn sweep_one(
                     None => slot.insert(Engine::new(circuit, regime)?),
                 };
                 let solved = engine.solve(frequency_hz);
-                vec![solved.map(|()| batch::row(circuit, engine, frequency_hz, &varied))]
+                let row = solved.map(|()| batch::row(circuit, engine, frequency_hz, &varied));
+                (now, vec![row])
             }
         };
-        for outcome in outcomes {
-            if emit(outcome)?.is_break() {
+        for (&frequency_hz, outcome) in now.iter().zip(outcomes) {
+            let row = match outcome {
+                Ok(row) => row,
+                Err(StudyError::NoSolution(why)) => {
+                    if sink(Event::Unsolved { frequency_hz, why: &why }).is_break() {
+                        return Ok(ControlFlow::Break(()));
+                    }
+                    batch::row_without_values(circuit, frequency_hz, &varied)
+                }
+                Err(refused) => return Err(refused),
+            };
+            if sink(Event::Row(&row)).is_break() {
                 return Ok(ControlFlow::Break(()));
             }
         }
     }
-    if let Some(batches) = &batches {
-        return Ok(sink(Event::Tally(&batches.tally())));
+    match &batches {
+        Some(batches) => Ok(sink(Event::Tally(&batches.tally()))),
+        None => Ok(ControlFlow::Continue(())),
     }
-    Ok(ControlFlow::Continue(()))
 }
 
 /// Sweeps of fewer frequencies above zero than this are solved one by one.

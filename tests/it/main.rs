@@ -7,6 +7,7 @@
 //! - `examples`: circuits of the scenario and of the docs
 //! - `mutated`: circuits with random faults never make anything panic
 //! - `prove`: circuits proved identical, told apart, or called undecided
+//! - `refine`: sweeps whose points are chosen by the response
 //! - `reference`: published values from outside the project
 //! - `swap`: circuits with their couplings replaced
 //! - `tidy`: rules of the house
@@ -20,6 +21,7 @@ mod examples;
 mod mutated;
 mod prove;
 mod reference;
+mod refine;
 mod support;
 mod swap;
 mod tidy;

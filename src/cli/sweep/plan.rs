@@ -5,8 +5,13 @@ use crate::cli::options::{Common, assignment, typed_value};
 use crate::cli::report::Stop;
 use crate::cli::sweep::SweepArgs;
 use crate::diag::Diagnostic;
+use crate::quantity::Dimension;
+use crate::study::adaptive::{self, Axis, Refine};
 use crate::study::grid::MOST_POINTS;
 use crate::study::sweep::{Plan, Vary};
+
+/// Points in a decade that a refined sweep starts from.
+const COARSE_PER_DECADE: usize = 2;
 
 /// `name=a..b:n` as typed.
 #[derive(Clone, Debug, PartialEq, Eq)]
@@ -54,6 +59,34 @@ fn vary(range: &TypedRange, common: &mut Common) -> Result<Vary, Stop> {
     Ok(Vary { name: range.name.clone(), from, to, count: range.count, dimension })
 }
 
+/// How finely to sweep, where `--refine` asks for it.
+pub fn refine(typed: &SweepArgs, common: &mut Common) -> Result<Option<Refine>, Stop> {
+    /// Below this, lines would have to be straighter than the results are known.
+    const LEAST_TOLERANCE: f64 = 1e-8;
+    const LARGEST_TOLERANCE: f64 = 0.5;
+    if !typed.refine {
+        return Ok(None);
+    }
+    let mut tolerance = adaptive::USUAL_TOLERANCE;
+    if let Some(text) = &typed.tolerance {
+        let option = "--tolerance";
+        let (value, dimension) =
+            common.program.constant(option, text).map_err(|wrong| common.stop(wrong))?;
+        let plain = dimension == Dimension::NONE;
+        if !plain || !(LEAST_TOLERANCE..=LARGEST_TOLERANCE).contains(&value) {
+            let words = format!(
+                "`{option} {text}`: a tolerance is a part of the reading, from 1e-8 to one half"
+            );
+            let help = "as in `--tolerance 0.1%`";
+            return Err(common.stop(Diagnostic::error(words).help(help)));
+        }
+        tolerance = value;
+    }
+    let axis = if typed.band.linear { Axis::Linear } else { Axis::Logarithmic };
+    let most = typed.most.map_or(adaptive::USUAL_MOST, |most| most as usize);
+    Ok(Some(Refine { tolerance, most, axis }))
+}
+
 /// What to sweep, in plain numbers.
 pub fn plan(typed: &SweepArgs, common: &mut Common) -> Result<Plan, Stop> {
     for (i, range) in typed.vary.iter().enumerate() {
@@ -64,7 +97,8 @@ pub fn plan(typed: &SweepArgs, common: &mut Common) -> Result<Plan, Stop> {
             return Err(common.stop(Diagnostic::error(format!("`{name}` is given {with}"))));
         }
     }
-    let frequencies_hz = band::frequencies(&typed.band, common)?;
+    let usual = if typed.refine { COARSE_PER_DECADE } else { band::USUAL_PER_DECADE };
+    let frequencies_hz = band::frequencies(&typed.band, usual, common)?;
     let counts = typed.vary.iter().map(|range| range.count);
     let rows = counts.fold(frequencies_hz.len(), usize::saturating_mul);
     if rows > MOST_POINTS {
