@@ -5,6 +5,7 @@
 //! - `compare`: two circuits across a band against closed forms
 //! - `exact`: circuits drawn at random, solved in exact arithmetic by another formulation
 //! - `examples`: circuits of the scenario and of the docs
+//! - `lanes`: sweeps in lanes against exact solutions and single frequencies
 //! - `mutated`: circuits with random faults never make anything panic
 //! - `prove`: circuits proved identical, told apart, or called undecided
 //! - `refine`: sweeps whose points are chosen by the response
@@ -18,6 +19,7 @@ mod cli;
 mod compare;
 mod exact;
 mod examples;
+mod lanes;
 mod mutated;
 mod prove;
 mod reference;

@@ -32,6 +32,7 @@ fn swept_as(text: &str, frequencies_hz: Vec<f64>, refine: Option<Refine>) -> Swe
     let mut swept = Swept { head, rows: vec![], resonances: vec![], unsolved: vec![], full: false };
     let mut sink = |event: Event| {
         match event {
+            Event::Tally(_) => {}
             Event::Head(head) => swept.head = head.clone(),
             Event::Row(row) => swept.rows.push(row.clone()),
             Event::Unsolved { frequency_hz, .. } => swept.unsolved.push(frequency_hz),
