@@ -275,7 +275,8 @@ impl Model {
             }
             residue.iter_mut().for_each(|sum| *sum /= slope);
             let correction = below / slope;
-            if step == STEPS || !(correction.norm() <= 0.1 * at.norm()) {
+            let sound = correction.norm() <= 0.1 * at.norm();
+            if step == STEPS || !sound {
                 break;
             }
             at -= correction;
