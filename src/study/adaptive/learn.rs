@@ -97,7 +97,10 @@ pub fn learn(
             continue;
         }
         if let Some(model) = &model {
-            learned.poles.extend(model.poles(low_hz, high_hz, 0.5 * tolerance));
+            // What was never looked at is made of rounding.
+            let solved = |pole: &Pole| places(pole).iter().all(|f| is_near(sampler, pole, *f));
+            let poles = model.poles(low_hz, high_hz, 0.5 * tolerance).into_iter().filter(solved);
+            learned.poles.extend(poles.collect::<Vec<_>>());
         }
         learned.parts.push(Part { low_hz, high_hz, model });
     }
@@ -122,8 +125,11 @@ fn settle(
             return Ok(None);
         }
     }
+    /// A last fit may show new resonances, real ones or made of rounding: this often they are
+    /// looked at.
+    const MOST_AFTER: usize = 4;
     let mut before: Option<Model> = None;
-    let mut settled = false;
+    let (mut settled, mut after) = (false, 0);
     loop {
         let known = sampler.known(low_hz, high_hz);
         let have: Vec<f64> = known.iter().map(|k| k.frequency_hz).collect();
@@ -131,7 +137,12 @@ fn settle(
         let begin = begin.map_or(Vec::new(), |model| model.supports_hz().to_vec());
         let Some(model) = Model::fit(&known, &begin, MOST_SUPPORTS) else { return Ok(None) };
         if settled {
-            return Ok((model.misfit <= 0.01 * tolerance).then_some(model));
+            let more = unsolved_places(sampler, &model, (low_hz, high_hz), tolerance);
+            if more.is_empty() || after == MOST_AFTER || !take_all(sampler, &more)? {
+                return Ok((model.misfit <= 0.01 * tolerance).then_some(model));
+            }
+            after += 1;
+            continue;
         }
         if have.len() > MOST_SAMPLES {
             return Ok(None);
@@ -183,6 +194,16 @@ fn off(model: &Model, sampler: &Sampler, number: usize, largest: &[f64]) -> f64 
     relative.fold(0.0, |worst, off| if off > worst || off.is_nan() { off } else { worst })
 }
 
+/// Something was solved near a place of a resonance, or the place lies outside the band.
+fn is_near(sampler: &Sampler, pole: &Pole, frequency_hz: f64) -> bool {
+    let width = match pole.is_lossless() {
+        true => LOSSLESS_GAP * pole.frequency_hz(),
+        false => pole.half_width_hz(),
+    };
+    let inside = sampler.surrounds(frequency_hz);
+    !inside || sampler.distance_hz(frequency_hz) <= 0.3 * width
+}
+
 /// Tops and flanks of resonances without a sample near them.
 fn unsolved_places(
     sampler: &Sampler,
@@ -192,8 +213,7 @@ fn unsolved_places(
 ) -> Vec<f64> {
     let mut found = Vec::new();
     for pole in model.poles(low_hz, high_hz, 0.5 * tolerance) {
-        let near = 0.3 * pole.half_width_hz().max(LOSSLESS_GAP * pole.frequency_hz() * 0.1);
-        let new = |f: &f64| (low_hz..=high_hz).contains(f) && sampler.distance_hz(*f) > near;
+        let new = |f: &f64| (low_hz..=high_hz).contains(f) && !is_near(sampler, &pole, *f);
         found.extend(places(&pole).into_iter().filter(new));
     }
     found

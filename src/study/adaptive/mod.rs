@@ -98,6 +98,9 @@ pub fn run(
     })
 }
 
+/// Frequencies closer than this part are the same resonance without loss.
+const SAME_PART: f64 = 1e-9;
+
 fn refine_one(
     circuit: &Circuit,
     plan: &Plan,
@@ -120,7 +123,8 @@ fn refine_one(
         for pole in &learned.poles {
             let lossless = pole.is_lossless();
             let frequency_hz = pole.frequency_hz();
-            if lossless {
+            // Say whether it is solvable there, unless a row did so already.
+            if lossless && sampler.distance_hz(frequency_hz) > SAME_PART * frequency_hz {
                 sampler.take(frequency_hz)?;
             }
             let q = if lossless { f64::INFINITY } else { pole.q() };

@@ -275,9 +275,8 @@ impl Model {
             }
             residue.iter_mut().for_each(|sum| *sum /= slope);
             let correction = below / slope;
-            let near = correction.norm() <= 0.1 * at.norm();
-            // Not-a-number is not near.
-            if step == STEPS || !near {
+            let sound = correction.norm() <= 0.1 * at.norm();
+            if step == STEPS || !sound {
                 break;
             }
             at -= correction;

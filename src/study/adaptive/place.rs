@@ -10,7 +10,7 @@ use std::cmp::Ordering;
 use std::collections::BinaryHeap;
 
 /// Readings below this part of their largest magnitude in the band need not be right in themselves.
-const LEAST_PART: f64 = 1e-12;
+const LEAST_PART: f64 = 1e-15;
 
 /// Two rows closer than this part of their frequency are not parted further: what jumps, jumps
 /// between them.

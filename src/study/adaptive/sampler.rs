@@ -143,6 +143,12 @@ impl<'c> Sampler<'c> {
         away(below).min(away(above))
     }
 
+    /// True between the lowest and the highest frequency solved.
+    pub fn surrounds(&self, frequency_hz: f64) -> bool {
+        let bits = frequency_hz.to_bits();
+        self.order.range(..=bits).next_back().is_some() && self.order.range(bits..).next().is_some()
+    }
+
     /// The samples a model can be fitted to, ascending.
     pub fn known(&self, from_hz: f64, to_hz: f64) -> Vec<Known<'_>> {
         let usable = |number: usize| {
