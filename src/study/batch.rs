@@ -6,16 +6,15 @@ use crate::number::ComplexTwofold;
 use crate::solve::Pattern;
 use crate::solve::lanes::{Equations, Plan, Uses, Workspace};
 use crate::study::engine::Engine;
-use crate::study::point::missed;
+use crate::study::point::{EXTRA_LOW_VOLTS_AC, missed};
 use crate::study::{StudyError, SweepRow, Value};
 use crate::system::Quantity;
 use crate::system::affine::AffineSystem;
 use num_complex::Complex64;
 use rayon::prelude::*;
 
-/// Largest relative correction that one refinement is trusted to make good: what is left after it
-/// is of the order of its square, far below what a double shows.
-const LARGEST_CORRECTION: f64 = 1e-10;
+/// Relative error that the corrections of a lane may leave: below what a double shows.
+const MOST_LEFT: f64 = 1e-16;
 
 /// Reserve on the bound of what a correction leaves, as it rests on an observed ratio.
 const RESERVE: f64 = 8.0;
@@ -61,6 +60,8 @@ pub(crate) struct Batches<'c> {
     /// Formulas of the further values of the equations, true for those that are subtracted.
     extras: Vec<(bool, FormulaId)>,
     needed: Vec<FormulaId>,
+    /// The unknowns that the readings rest on.
+    unknowns: Vec<u32>,
     states: Vec<State<'c>>,
     in_lanes: usize,
 }
@@ -114,12 +115,13 @@ impl<'c> Batches<'c> {
         let Ok(plan) = Plan::new(&pattern, &equations, frequency_hz, &sample, uses) else {
             return Ok(None);
         };
+        let unknowns = engine.needed_unknowns();
         let workspace = plan.workspace(&equations);
         let mut states = vec![State { engine, workspace: workspace.clone(), alone: 0 }];
         for _ in 1..rayon::current_num_threads() {
             states.push(State { engine: make()?, workspace: workspace.clone(), alone: 0 });
         }
-        Ok(Some(Batches { circuit, plan, extras, needed, states, in_lanes: 0 }))
+        Ok(Some(Batches { circuit, plan, extras, needed, unknowns, states, in_lanes: 0 }))
     }
 
     /// Frequencies to hand over at once.
@@ -149,8 +151,14 @@ impl<'c> Batches<'c> {
         let lanes = self.plan.lanes();
         let batches = frequencies_hz.len().div_ceil(lanes);
         let share = batches.div_ceil(self.states.len()).max(1) * lanes;
-        let (circuit, plan, extras, needed) =
-            (self.circuit, &self.plan, &self.extras, &self.needed);
+        let job = Job {
+            circuit: self.circuit,
+            plan: &self.plan,
+            extras: &self.extras,
+            needed: &self.needed,
+            unknowns: &self.unknowns,
+            varied,
+        };
         let parts: Vec<Vec<Outcome>> = self
             .states
             .par_iter_mut()
@@ -158,7 +166,6 @@ impl<'c> Batches<'c> {
             .map(|(state, part)| {
                 let mut out = Vec::with_capacity(part.len());
                 for batch in part.chunks(lanes) {
-                    let job = Job { circuit, plan, extras, needed, varied };
                     job.run(state, batch, &mut out);
                 }
                 out
@@ -174,6 +181,7 @@ struct Job<'j> {
     plan: &'j Plan,
     extras: &'j [(bool, FormulaId)],
     needed: &'j [FormulaId],
+    unknowns: &'j [u32],
     varied: &'j [f64],
 }
 
@@ -202,16 +210,17 @@ impl Job<'_> {
         };
         self.plan.refine(workspace);
         for (lane, good) in good.iter_mut().enumerate() {
-            *good &= workspace.contraction(lane) <= LARGEST_CORRECTION;
+            let (correction, left) = workspace.left(lane);
+            *good &= RESERVE * left * correction <= MOST_LEFT;
         }
         for (lane, &frequency_hz) in batch.iter().enumerate() {
             if good[lane] {
-                let contraction = workspace.contraction(lane);
-                engine.adopt(frequency_hz, self.needed, |unknown| {
+                let (largest, left) = workspace.left(lane);
+                engine.adopt(frequency_hz, self.needed, self.unknowns, |unknown| {
                     let (x, correction) = workspace.refined(unknown, lane);
                     let sum = ComplexTwofold::from(x) + ComplexTwofold::from(correction);
-                    let left = RESERVE * contraction * (correction.norm() + contraction * x.norm());
-                    (sum, left + TWOFOLD_ROUNDING * x.norm())
+                    let off = RESERVE * left * (correction.norm() + largest * x.norm());
+                    (sum, off + TWOFOLD_ROUNDING * x.norm())
                 });
             } else {
                 *alone += 1;
@@ -220,13 +229,25 @@ impl Job<'_> {
                     continue;
                 }
             }
-            out.push(Ok(self.row(engine, frequency_hz)));
+            let highest = match good[lane] {
+                true => highest_volts(engine, workspace, lane),
+                false => engine.highest_volts(),
+            };
+            let row = row(self.circuit, engine, frequency_hz, self.varied, highest);
+            out.push(Ok(row));
         }
     }
+}
 
-    fn row(&self, engine: &Engine, frequency_hz: f64) -> SweepRow {
-        row(self.circuit, engine, frequency_hz, self.varied)
+/// The highest voltage in a lane: exact where it is of concern, else that of the highest node.
+fn highest_volts(engine: &Engine, workspace: &Workspace, lane: usize) -> f64 {
+    let nodes = engine.system().of_node.iter().flatten();
+    let node = nodes.map(|&unknown| workspace.size(unknown as usize, lane)).fold(0.0, f64::max);
+    // No drop is larger than twice the highest node.
+    if 2.0 * node <= EXTRA_LOW_VOLTS_AC {
+        return node;
     }
+    engine.highest_volts_of(|unknown| workspace.refined(unknown as usize, lane).0)
 }
 
 /// The row of a frequency that has no solution.
@@ -251,13 +272,14 @@ pub(crate) fn row(
     engine: &Engine,
     frequency_hz: f64,
     varied: &[f64],
+    highest_volts: f64,
 ) -> SweepRow {
     let mut row = SweepRow {
         varied: varied.to_vec(),
         frequency_hz,
         values: Vec::with_capacity(circuit.reads.len()),
         missed: Vec::with_capacity(circuit.reads.len()),
-        highest_volts: engine.highest_volts(),
+        highest_volts,
     };
     for read in &circuit.reads {
         let value = engine.value(read.value).map_or_else(|_| undetermined(), Value::from);

@@ -117,17 +117,19 @@ impl<'c> Engine<'c> {
         Ok(())
     }
 
-    /// Takes over a solution found elsewhere, unknown by unknown with its bound, and evaluates the
+    /// Takes over `unknowns` of a solution found elsewhere, each with its bound, and evaluates the
     /// readings. `needed` are the formulas of the frequency that they rest on.
     pub(crate) fn adopt(
         &mut self,
         frequency_hz: f64,
         needed: &[FormulaId],
+        unknowns: &[u32],
         solution: impl Fn(usize) -> (ComplexTwofold, f64),
     ) {
         self.evaluate_at(frequency_hz, needed);
-        for (unknown, (x, error)) in self.solution.iter_mut().zip(&mut self.error).enumerate() {
-            (*x, *error) = solution(unknown);
+        for &unknown in unknowns {
+            let at = unknown as usize;
+            (self.solution[at], self.error[at]) = solution(at);
         }
         self.evaluate_readings();
     }
@@ -285,18 +287,56 @@ impl<'c> Engine<'c> {
 
     /// The highest voltage anywhere: of a node against its reference, or across an element.
     pub fn highest_volts(&self) -> f64 {
-        let node = |id: NodeId| match self.system.of_node[id.index()] {
-            Some(unknown) => self.solution[unknown as usize].to_complex(),
-            None => Complex64::ZERO,
-        };
-        let nodes = (0..self.circuit.nodes.len()).map(|i| node(NodeId(i as u32)).norm());
+        self.highest_volts_of(|unknown| self.solution[unknown as usize].to_complex())
+    }
+
+    /// The same of a solution found elsewhere, unknown by unknown.
+    pub(crate) fn highest_volts_of(&self, solution: impl Fn(u32) -> Complex64) -> f64 {
+        let node = |id: NodeId| self.system.of_node[id.index()].map_or(Complex64::ZERO, &solution);
+        let nodes = (0..self.circuit.nodes.len()).map(|i| node(NodeId(i as u32)).norm_sqr());
         let tied = self
             .circuit
             .elements
             .iter()
             .filter(|element| self.system.islands.same(element.left, element.right));
-        let drops = tied.map(|element| (node(element.left) - node(element.right)).norm());
-        nodes.chain(drops).fold(0.0, f64::max)
+        let drops = tied.map(|element| (node(element.left) - node(element.right)).norm_sqr());
+        nodes.chain(drops).fold(0.0, f64::max).sqrt()
+    }
+
+    /// The unknowns that the readings, and what they measure, rest on.
+    pub(crate) fn needed_unknowns(&self) -> Vec<u32> {
+        let mut needed = Vec::new();
+        for &(_, measure) in &self.of_solution {
+            if let Some(measure) = measure {
+                self.unknowns_of(measure, &mut needed);
+            }
+        }
+        needed.sort_unstable();
+        needed.dedup();
+        needed
+    }
+
+    fn unknowns_of(&self, measure: Measure, needed: &mut Vec<u32>) {
+        let node = |id: NodeId| self.system.of_node[id.index()];
+        let ends = |id: ElementId| {
+            let element = self.circuit.element(id);
+            [node(element.left), node(element.right)].into_iter().flatten()
+        };
+        match measure {
+            Measure::Volts(a, b) => needed.extend(node(a).into_iter().chain(b.and_then(node))),
+            Measure::Drop(id) => needed.extend(ends(id)),
+            Measure::Amps(id) | Measure::Power(id) => {
+                needed.extend(ends(id));
+                match (self.system.through[id.index()], &self.circuit.element(id).law) {
+                    (Through::Unknown(unknown), _) => needed.push(unknown),
+                    // What drives it is a voltage, or a current that is an unknown.
+                    (Through::Given, Law::CurrentSource(drive)) => {
+                        drive.terms.iter().for_each(|(_, term)| self.unknowns_of(*term, needed));
+                    }
+                    _ => {}
+                }
+            }
+        }
     }
 
     /// Left minus right of an element; `None` where nothing ties its ends.

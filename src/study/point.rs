@@ -11,7 +11,7 @@ use crate::text::ast::LimitKind;
 use num_complex::Complex64;
 
 /// Extra-low voltage, a.c.: 50 V rms (IEC 60364-4-41).
-const EXTRA_LOW_VOLTS_AC: f64 = 50.0;
+pub(crate) const EXTRA_LOW_VOLTS_AC: f64 = 50.0;
 
 /// Extra-low voltage, d.c.: 120 V (IEC 60364-4-41).
 const EXTRA_LOW_VOLTS_DC: f64 = 120.0;

@@ -176,7 +176,10 @@ fn sweep_one(
                     None => slot.insert(Engine::new(circuit, regime)?),
                 };
                 let solved = engine.solve(frequency_hz);
-                let row = solved.map(|()| batch::row(circuit, engine, frequency_hz, &varied));
+                let row = solved.map(|()| {
+                    let highest = engine.highest_volts();
+                    batch::row(circuit, engine, frequency_hz, &varied, highest)
+                });
                 (now, vec![row])
             }
         };

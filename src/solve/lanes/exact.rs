@@ -81,15 +81,15 @@ impl<const W: usize> Sum<W> {
         }
     }
 
-    /// self − sign·a·x
+    /// self − sign·a·(x + what was rounded off it)
     #[inline(always)]
-    fn less_product(&mut self, a: &Sum<W>, x: &[f64; W], sign: f64) {
+    fn less_product(&mut self, a: &Sum<W>, x: &[f64; W], x_low: &[f64; W], sign: f64) {
         for w in 0..W {
             let x = sign * x[w];
             let (p, e) = two_product(a.high[w], x);
             let (s, t) = two_sum(self.high[w], -p);
             self.high[w] = s;
-            self.low[w] += t - (e + a.low[w] * x);
+            self.low[w] += t - (e + (a.low[w] * x + sign * a.high[w] * x_low[w]));
         }
     }
 
@@ -118,11 +118,12 @@ fn two_product(a: f64, b: f64) -> (f64, f64) {
     (p, a.mul_add(b, -p))
 }
 
-/// Writes b − A·x of the first right-hand side, x being `buffers.solution`, into
-/// `buffers.carried`, rows in the order of elimination.
+/// Writes b − A·x of the first right-hand side into `buffers.carried`, rows in the order of
+/// elimination; x is `buffers.before` and, in less weight, `buffers.low`.
 #[inline(always)]
 pub(super) fn residual<const W: usize>(listing: &Listing, buffers: &mut Buffers<W>) {
-    let Buffers { frequency, carried, extras, extras_low, solution, entries, exact, .. } = buffers;
+    let Buffers { frequency, carried, extras, extras_low, before, low, entries, exact, .. } =
+        buffers;
     let (mut at, mut next_extra, mut next_right) = (0, 0, 0);
     for (order, &count) in listing.counts.iter().enumerate() {
         let b = &exact.right[order];
@@ -164,11 +165,12 @@ pub(super) fn residual<const W: usize>(listing: &Listing, buffers: &mut Buffers<
                 a_im.add(&high.im, &low.im);
                 next_extra += 1;
             }
-            let x = &solution[listing.columns[at] as usize];
-            re.less_product(&a_re, &x.re, 1.0);
-            re.less_product(&a_im, &x.im, -1.0);
-            im.less_product(&a_re, &x.im, 1.0);
-            im.less_product(&a_im, &x.re, 1.0);
+            let column = listing.columns[at] as usize;
+            let (x, x_low) = (&before[column], &low[column]);
+            re.less_product(&a_re, &x.re, &x_low.re, 1.0);
+            re.less_product(&a_im, &x.im, &x_low.im, -1.0);
+            im.less_product(&a_re, &x.im, &x_low.im, 1.0);
+            im.less_product(&a_im, &x.re, &x_low.re, 1.0);
             at += 1;
         }
         carried[order] = Lane { re: re.total(), im: im.total() };

@@ -73,11 +73,13 @@ pub(super) fn judge<const W: usize, const FMA: bool>(
 /// The largest correction of an unknown relative to it, in each lane: what the correction itself
 /// may be off by, relative to its size, since it comes from the same factors.
 #[inline(always)]
-pub(super) fn contraction<const W: usize>(buffers: &mut Buffers<W>) {
-    let Buffers { before, solution, contraction, .. } = buffers;
+pub(super) fn contraction<const W: usize>(
+    solution: &[Lane<W>],
+    corrections: &[Lane<W>],
+) -> [f64; W] {
     let (mut above, mut below) = ([0.0; W], [1.0; W]);
     let mut total = [0.0; W];
-    for (old, correction) in before.iter().zip(solution) {
+    for (old, correction) in solution.iter().zip(corrections) {
         let (size, mut scale) = (correction.size(), old.size());
         for w in 0..W {
             scale[w] += LEAST;
@@ -87,11 +89,14 @@ pub(super) fn contraction<const W: usize>(buffers: &mut Buffers<W>) {
         }
         keep_worse(&mut above, &mut below, &size, &scale);
     }
+    let mut out = [f64::INFINITY; W];
     for w in 0..W {
         let worst = above[w] / below[w];
-        contraction[w] =
-            if total[w].is_finite() && worst.is_finite() { worst } else { f64::INFINITY };
+        if total[w].is_finite() && worst.is_finite() {
+            out[w] = worst;
+        }
     }
+    out
 }
 
 /// Takes size/scale in the place of above/below where it is larger.

@@ -164,8 +164,11 @@ struct Buffers<const W: usize> {
     /// Solutions before a correction.
     before: Vec<Lane<W>>,
     backward: [f64; W],
-    /// Largest correction relative to its unknown.
-    contraction: [f64; W],
+    /// What the first correction added to `before`, and the second.
+    low: Vec<Lane<W>>,
+    /// Largest first correction relative to its unknown, and what the last one leaves of it.
+    correction: [f64; W],
+    left: [f64; W],
 }
 
 #[derive(Clone, Debug)]
@@ -322,7 +325,9 @@ impl Plan {
             solution: room(self.n * driven.sides),
             before: room(if self.shape.keeps_factors() { self.n * driven.sides } else { 0 }),
             backward: [f64::INFINITY; W],
-            contraction: [f64::INFINITY; W],
+            low: room(if self.shape.keeps_factors() { self.n * driven.sides } else { 0 }),
+            correction: [f64::INFINITY; W],
+            left: [f64::INFINITY; W],
             entries,
             driven,
         }
@@ -414,15 +419,23 @@ impl Workspace {
         either!(&mut self.width, buffers => buffers.extras_low[which].set(lane, value));
     }
 
-    /// After [`Plan::refine`]: the largest correction of an unknown relative to it, in one lane.
-    pub fn contraction(&self, lane: usize) -> f64 {
-        either!(&self.width, buffers => buffers.contraction[lane])
+    /// After [`Plan::refine`], for one lane: the largest first correction of an unknown relative to
+    /// it, c, and a factor r. An unknown x with the correction d is off by about
+    /// r·(|d| + c·|x|).
+    pub fn left(&self, lane: usize) -> (f64, f64) {
+        either!(&self.width, buffers => (buffers.correction[lane], buffers.left[lane]))
+    }
+
+    /// After [`Plan::refine`]: |re| + |im| of one unknown in one lane.
+    pub fn size(&self, unknown: usize, lane: usize) -> f64 {
+        let x = either!(&self.width, buffers => buffers.before[unknown].get(lane));
+        x.re.abs() + x.im.abs()
     }
 
     /// After [`Plan::refine`]: the solution of one unknown in one lane, and its correction.
     pub fn refined(&self, unknown: usize, lane: usize) -> (Complex64, Complex64) {
         either!(&self.width, buffers => {
-            (buffers.before[unknown].get(lane), buffers.solution[unknown].get(lane))
+            (buffers.before[unknown].get(lane), buffers.low[unknown].get(lane))
         })
     }
 

@@ -1,5 +1,6 @@
 //! The jobs a plan does, each compiled once for every width of vectors.
 
+use crate::solve::lanes::lane::Lane;
 use crate::solve::lanes::{
     Buffers, GOOD_BACKWARD_ERROR, Plan, Shape, eliminate, exact, judge, multifrontal,
 };
@@ -7,6 +8,13 @@ use crate::solve::lanes::{
 /// Corrections a lane may get. One makes an elimination with bearable pivots as good as a
 /// backward stable one (Skeel, 1980); the second is for those that were hardly bearable.
 const REFINEMENTS: usize = 2;
+
+/// Largest correction relative to its unknown after which one will do: what it leaves is of the
+/// order of its square.
+const ONE_CORRECTION: f64 = 1e-10;
+
+/// … and after which two will do: what they leave is of the order of its cube.
+const TWO_CORRECTIONS: f64 = 1e-6;
 
 /// What is to be done.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -29,10 +37,7 @@ pub(super) fn work<const W: usize, const V: usize, const FMA: bool>(
     job: Job,
 ) {
     if job == Job::Refine {
-        buffers.before.copy_from_slice(&buffers.solution);
-        exact::residual(plan.shape.listing(), buffers);
-        solve::<W, V, FMA>(plan, buffers, true);
-        return judge::contraction(buffers);
+        return refine::<W, V, FMA>(plan, buffers);
     }
     let again = job != Job::Run;
     if job == Job::SolveTransposed {
@@ -57,6 +62,34 @@ pub(super) fn work<const W: usize, const V: usize, const FMA: bool>(
         }
         if !again {
             judge::judge::<W, FMA>(plan.shape.listing(), buffers, may_refine);
+        }
+    }
+}
+
+/// Corrects every lane once, and those that need it a second time. A lane that does not need it
+/// stays as it is whatever its neighbours need.
+#[inline(always)]
+fn refine<const W: usize, const V: usize, const FMA: bool>(plan: &Plan, buffers: &mut Buffers<W>) {
+    buffers.before.copy_from_slice(&buffers.solution);
+    buffers.low.fill(Lane::ZERO);
+    exact::residual(plan.shape.listing(), buffers);
+    solve::<W, V, FMA>(plan, buffers, true);
+    let first = judge::contraction(&buffers.before, &buffers.solution);
+    buffers.low.copy_from_slice(&buffers.solution);
+    buffers.correction = first;
+    buffers.left = first;
+    let again = |w: usize| first[w] > ONE_CORRECTION && first[w] <= TWO_CORRECTIONS;
+    if !(0..W).any(again) {
+        return;
+    }
+    exact::residual(plan.shape.listing(), buffers);
+    solve::<W, V, FMA>(plan, buffers, true);
+    let second = judge::contraction(&buffers.low, &buffers.solution);
+    for w in (0..W).filter(|w| again(*w)) {
+        buffers.left[w] = first[w] * first[w].max(second[w]);
+        for (low, correction) in buffers.low.iter_mut().zip(&buffers.solution) {
+            low.re[w] += correction.re[w];
+            low.im[w] += correction.im[w];
         }
     }
 }
