@@ -241,7 +241,7 @@ fn how(tally: &Tally) -> String {
     };
     format!(
         "{shape}, {} multiply-adds a frequency; {} frequencies at once on {} threads; {} solved in \
-         lanes, each corrected once in twice the precision; {} alone with fresh pivots",
+         lanes and corrected in twice the precision, {} alone with fresh pivots",
         tally.work, tally.lanes, tally.threads, tally.in_lanes, tally.alone
     )
 }
