@@ -34,6 +34,9 @@ pub struct CommonArgs {
     #[arg(long, value_name = "N", default_value_t = 6,
           value_parser = clap::value_parser!(u8).range(1..=17))]
     digits: u8,
+    /// Show in the table of `solve` how far each voltage and reading may be off (±)
+    #[arg(long)]
+    bounds: bool,
 }
 
 #[derive(Clone, Copy, Debug, ValueEnum)]
@@ -107,7 +110,7 @@ impl CommonArgs {
             TypedForm::Rect => Form::Rect,
             TypedForm::Decibel => Form::Decibel,
         };
-        Style { form, peak: self.peak, digits: usize::from(self.digits) }
+        Style { form, peak: self.peak, digits: usize::from(self.digits), bounds: self.bounds }
     }
 
     /// Reads and parses the file with what it includes; the diagnostics are returned beside it.

@@ -128,7 +128,7 @@ mod tests {
         };
         assert_eq!(page.summary(), "2 nodes, 1 element, 0 couplings, 1 island");
         let mut out = Vec::new();
-        let style = Style { form: Form::Polar, peak: false, digits: 6 };
+        let style = Style { form: Form::Polar, peak: false, digits: 6, bounds: false };
         renderer(Format::Json, style).check(&page, &mut out);
         renderer(Format::Csv, style).check(&page, &mut out);
         expect![[r#"

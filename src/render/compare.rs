@@ -103,7 +103,7 @@ mod tests {
         let comparison = comparison();
         let page = ComparePage { first: "charger.bfl", second: "its tee", comparison: &comparison };
         let mut out = Vec::new();
-        let style = Style { form: Form::Polar, peak: false, digits: 6 };
+        let style = Style { form: Form::Polar, peak: false, digits: 6, bounds: false };
         renderer(format, style).comparison(&page, &mut out);
         wanted.assert_eq(&String::from_utf8(out).unwrap());
     }

@@ -198,7 +198,7 @@ mod tests {
     #[track_caller]
     fn swept_as(form: Form, peak: bool, expected: Expect) {
         let (head, rows) = samples::sweep();
-        let style = Style { form, peak, digits: 6 };
+        let style = Style { form, peak, digits: 6, bounds: false };
         let (mut csv, mut out) = (renderer(Format::Csv, style), Vec::new());
         csv.sweep_head(&head, &mut out);
         rows.iter().for_each(|row| csv.sweep_row(row, &mut out));
@@ -251,7 +251,7 @@ mod tests {
 
     #[test]
     fn a_solution_is_one_quantity_a_line() {
-        let style = Style { form: Form::Polar, peak: false, digits: 6 };
+        let style = Style { form: Form::Polar, peak: false, digits: 6, bounds: false };
         let solution = samples::solution();
         let page = SolvedPage { circuit: "link.bfl", title: None, solution: &solution };
         let mut out = Vec::new();

@@ -208,7 +208,7 @@ mod tests {
 
     #[track_caller]
     fn solved_as(peak: bool, expected: Expect) {
-        let style = Style { form: Form::Polar, peak, digits: 6 };
+        let style = Style { form: Form::Polar, peak, digits: 6, bounds: false };
         let mut solution = samples::solution();
         solution.elements.remove(0);
         solution.nodes.truncate(1);
@@ -240,7 +240,7 @@ mod tests {
 
     #[test]
     fn a_sweep_is_one_object_a_line() {
-        let style = Style { form: Form::Polar, peak: false, digits: 6 };
+        let style = Style { form: Form::Polar, peak: false, digits: 6, bounds: false };
         let (head, rows) = samples::sweep();
         let (mut json, mut out) = (renderer(Format::Json, style), Vec::new());
         json.sweep_head(&head, &mut out);

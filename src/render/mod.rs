@@ -44,6 +44,8 @@ pub struct Style {
     pub peak: bool,
     /// Most significant digits in tables.
     pub digits: usize,
+    /// Show the bound on the error of each voltage and reading.
+    pub bounds: bool,
 }
 
 impl Style {

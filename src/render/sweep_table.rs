@@ -173,7 +173,7 @@ mod tests {
     #[track_caller]
     fn swept_as(form: Form, expected: Expect) {
         let (head, rows) = samples::sweep();
-        let style = Style { form, peak: false, digits: 6 };
+        let style = Style { form, peak: false, digits: 6, bounds: false };
         let (mut table, mut out) = (renderer(Format::Table, style), Vec::new());
         table.sweep_head(&head, &mut out);
         rows.iter().for_each(|row| table.sweep_row(row, &mut out));

@@ -11,6 +11,9 @@ use crate::study::{NodeResult, Solution, SweepHead, SweepRow, Value};
 
 /// Digits of the stored energy, which comes without an error bound.
 const ENERGY_DIGITS: usize = 3;
+
+/// A bound is an order of magnitude with a little more.
+const BOUND_DIGITS: usize = 2;
 /// The table renderer.
 pub struct Table {
     style: Style,
@@ -83,6 +86,12 @@ impl Page<'_> {
         self.text.push_str(&format!("{} at {frequency}, {kind}\n\n", page.circuit));
     }
 
+    /// How far a result may be off, two digits of it.
+    fn bound(&self, value: Value, dimension: Dimension) -> String {
+        let error = self.style.shown(value, dimension, self.solution.frequency_hz).error;
+        exact(error, BOUND_DIGITS, &unit_of(dimension, false)).flat()
+    }
+
     /// One table for every reference, in the order the references first occur.
     fn nodes(&mut self) {
         let mut references: Vec<&str> = Vec::new();
@@ -99,10 +108,12 @@ impl Page<'_> {
         for (reference, nodes) in references.into_iter().zip(groups) {
             self.text.push_str(&format!("Volts to {reference}\n"));
             let values = nodes.iter().map(|n| self.shown(n.voltage, Dimension::VOLTAGE, false));
-            let columns = vec![
+            let mut columns = vec![
                 words("node", nodes.iter().map(|n| n.name.clone())),
                 numbers("voltage", values),
             ];
+            let bounds = nodes.iter().map(|n| self.bound(n.voltage, Dimension::VOLTAGE));
+            columns.extend(self.style.bounds.then(|| words("±", bounds)));
             draw(columns, &mut self.text);
         }
     }
@@ -187,6 +198,8 @@ impl Page<'_> {
             words("reading", readings.iter().map(|r| r.name.clone())),
             numbers("value", values),
         ];
+        let bounds = readings.iter().map(|r| self.bound(r.value, r.dimension));
+        columns.extend(self.style.bounds.then(|| words("±", bounds)));
         if readings.iter().any(|r| !r.missed.is_empty()) {
             let missed = |words: &[String]| match words {
                 [] => String::new(),
@@ -281,7 +294,7 @@ mod tests {
 
     #[track_caller]
     fn solved_as(form: Form, peak: bool, expected: Expect) {
-        let text = solved(Style { form, peak, digits: 6 });
+        let text = solved(Style { form, peak, digits: 6, bounds: false });
         assert!(text.lines().all(|line| line.width() <= 80), "{text}");
         expected.assert_eq(&text);
     }
