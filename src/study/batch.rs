@@ -4,7 +4,7 @@
 use crate::circuit::{Circuit, FormulaId};
 use crate::number::ComplexTwofold;
 use crate::solve::Pattern;
-use crate::solve::lanes::{Equations, Plan, Uses, Workspace};
+use crate::solve::lanes::{Equations, Plan, Uses, Verdict, Workspace};
 use crate::study::engine::Engine;
 use crate::study::point::{EXTRA_LOW_VOLTS_AC, missed};
 use crate::study::{StudyError, SweepRow, Value};
@@ -206,7 +206,9 @@ impl Job<'_> {
         }
         let mut good: Vec<bool> = {
             let verdicts = self.plan.run(workspace, batch);
-            verdicts.iter().zip(&valued).map(|(v, valued)| v.is_good() && *valued).collect()
+            // A poor backward error shows in the corrections too, and may be made good by them.
+            let solved = |v: &Verdict| v.backward_error.is_finite();
+            verdicts.iter().zip(&valued).map(|(v, valued)| solved(v) && *valued).collect()
         };
         self.plan.refine(workspace);
         for (lane, good) in good.iter_mut().enumerate() {

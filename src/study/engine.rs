@@ -49,14 +49,6 @@ impl<'c> Engine<'c> {
             return Err(StudyError::NoSolution(found));
         }
         let n = system.unknowns.len();
-        let pattern =
-            Pattern { n, column_start: system.column_start.clone(), row: system.row.clone() };
-        let solver = match n {
-            0 => None,
-            _ => Some(Solver::new(pattern).map_err(|error| {
-                StudyError::NoSolution(explain::singular(circuit, &system, None, &error, None))
-            })?),
-        };
         let measure = |id: FormulaId| match system.tape.get(id).operation {
             Operation::Measure(measure) => Some(measure),
             _ => None,
@@ -82,7 +74,7 @@ impl<'c> Engine<'c> {
             solution: vec![ComplexTwofold::ZERO; n],
             error: vec![0.0; n],
             system,
-            solver,
+            solver: None,
         })
     }
 
@@ -190,7 +182,18 @@ impl<'c> Engine<'c> {
     }
 
     fn factor_and_refine(&mut self) -> Result<Option<Trust>, SolveError> {
-        let Some(solver) = &mut self.solver else { return Ok(None) };
+        if self.system.unknowns.is_empty() {
+            return Ok(None);
+        }
+        // Made when it is first needed: a sweep in lanes may never need it.
+        let solver = match &mut self.solver {
+            Some(solver) => solver,
+            none => none.insert(Solver::new(Pattern {
+                n: self.system.unknowns.len(),
+                column_start: self.system.column_start.clone(),
+                row: self.system.row.clone(),
+            })?),
+        };
         solver.factor(&self.rounded)?;
         solver
             .solve_refined(

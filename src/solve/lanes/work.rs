@@ -9,12 +9,17 @@ use crate::solve::lanes::{
 /// backward stable one (Skeel, 1980); the second is for those that were hardly bearable.
 const REFINEMENTS: usize = 2;
 
-/// Largest correction relative to its unknown after which one will do: what it leaves is of the
-/// order of its square.
-const ONE_CORRECTION: f64 = 1e-10;
+/// Corrections a refined lane gets at most.
+const MOST_CORRECTIONS: i32 = 5;
 
-/// … and after which two will do: what they leave is of the order of its cube.
-const TWO_CORRECTIONS: f64 = 1e-6;
+/// Relative error left from which on no more corrections are made: far below what a double shows.
+const ENOUGH: f64 = 1e-20;
+
+/// Largest first correction, relative to its unknown, of factors that are of any use.
+const LARGEST_CORRECTION: f64 = 1e-2;
+
+/// What each further correction must shrink to.
+const SHRINKS: f64 = 0.1;
 
 /// What is to be done.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -66,8 +71,8 @@ pub(super) fn work<const W: usize, const V: usize, const FMA: bool>(
     }
 }
 
-/// Corrects every lane once, and those that need it a second time. A lane that does not need it
-/// stays as it is whatever its neighbours need.
+/// Corrects every lane once, and those that need it again. A lane that does not need it stays as
+/// it is whatever its neighbours need.
 #[inline(always)]
 fn refine<const W: usize, const V: usize, const FMA: bool>(plan: &Plan, buffers: &mut Buffers<W>) {
     buffers.before.copy_from_slice(&buffers.solution);
@@ -78,18 +83,31 @@ fn refine<const W: usize, const V: usize, const FMA: bool>(plan: &Plan, buffers:
     buffers.low.copy_from_slice(&buffers.solution);
     buffers.correction = first;
     buffers.left = first;
-    let again = |w: usize| first[w] > ONE_CORRECTION && first[w] <= TWO_CORRECTIONS;
-    if !(0..W).any(again) {
-        return;
-    }
-    exact::residual(plan.shape.listing(), buffers);
-    solve::<W, V, FMA>(plan, buffers, true);
-    let second = judge::contraction(&buffers.low, &buffers.solution);
-    for w in (0..W).filter(|w| again(*w)) {
-        buffers.left[w] = first[w] * first[w].max(second[w]);
-        for (low, correction) in buffers.low.iter_mut().zip(&buffers.solution) {
-            low.re[w] += correction.re[w];
-            low.im[w] += correction.im[w];
+    let mut shrunk = [1.0; W];
+    for step in 1..MOST_CORRECTIONS {
+        let mut again = [false; W];
+        for w in 0..W {
+            let done = buffers.left[w] * first[w] <= ENOUGH;
+            again[w] = !done && first[w] <= LARGEST_CORRECTION && shrunk[w] <= 1.0;
+        }
+        if !again.contains(&true) {
+            return;
+        }
+        exact::residual(plan.shape.listing(), buffers);
+        solve::<W, V, FMA>(plan, buffers, true);
+        let ratio = judge::contraction(&buffers.low, &buffers.solution);
+        for w in (0..W).filter(|w| again[*w]) {
+            // A correction that does not shrink shows that the factors are of no use here.
+            if ratio[w] > SHRINKS * shrunk[w] {
+                shrunk[w] = f64::INFINITY;
+                continue;
+            }
+            shrunk[w] = ratio[w];
+            buffers.left[w] = first[w] * ratio[w].max(first[w].powi(step));
+            for (low, correction) in buffers.low.iter_mut().zip(&buffers.solution) {
+                low.re[w] += correction.re[w];
+                low.im[w] += correction.im[w];
+            }
         }
     }
 }
