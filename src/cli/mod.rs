@@ -19,7 +19,7 @@ use std::process::ExitCode;
 /// Solves AC networks with coupled windings.
 ///
 /// A circuit is a text file (.bfl); `-` reads it from standard input.
-/// Exit codes: 0 done, 1 a limit was missed, 2 the circuit or the call is wrong,
+/// Exit codes: 0 done, 1 a limit was missed or circuits differ, 2 the circuit or the call is wrong,
 /// 3 there is no solution that could be trusted.
 #[derive(Parser)]
 #[command(name = "bifilar", version, max_term_width = 80, subcommand_required = true)]

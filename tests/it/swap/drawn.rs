@@ -5,6 +5,8 @@ use crate::swap::agree::{assert_agrees, assert_same_reads, read, solvable};
 use bifilar::circuit::Circuit;
 use bifilar::circuit::island::{Islands, Regime};
 use bifilar::circuit::print::Printer;
+use bifilar::study::pair::{Correspondence, Matching};
+use bifilar::study::prove::{self, Verdict};
 use bifilar::swap::{self, Condition, Kind, Options, SwapError, Swapped, Twin};
 use fastrand::Rng;
 
@@ -30,6 +32,14 @@ fn ties(twin: &Twin) -> usize {
     twin.records.iter().map(of).sum()
 }
 
+/// What the proof says of a circuit and another that its twin's names and readings fit.
+fn verdict(circuit: &Circuit, twin: &Twin, other: &Circuit) -> Verdict {
+    let same = Correspondence::of_twin(twin);
+    let matching = Matching::new(circuit, other, &same);
+    let options = prove::Options { seed: Some(1), frequencies_hz: vec![159.0, 1e3, 2e4] };
+    prove::decide(circuit, other, &matching.matched, &options).verdict
+}
+
 /// Checks every kind of twin; how many there were of each.
 fn check_all(circuit: &Circuit, frequencies_hz: &[f64], counts: &mut [usize; 5]) {
     for (place, kind) in Kind::ALL.into_iter().enumerate() {
@@ -45,6 +55,8 @@ fn check_all(circuit: &Circuit, frequencies_hz: &[f64], counts: &mut [usize; 5])
                     for &frequency_hz in frequencies_hz {
                         assert_agrees(circuit, &twin, frequency_hz, WITHIN);
                     }
+                    let proof = verdict(circuit, &twin, &twin.circuit);
+                    assert!(matches!(proof, Verdict::Identical { .. }), "{kind}: {proof:?}");
                 }
                 Err(
                     SwapError::TooMany { .. }
@@ -223,6 +235,8 @@ fn any_leg_moved_by_one_part_in_a_million_is_noticed() {
                 moved.tape.push(bifilar::circuit::Operation::Product(number, old), henry, span);
             let off = (solve(&moved, load(&moved)) - exact).norm() / exact.norm();
             assert!(off > 1e-8, "{kind}: {off:e}");
+            let proof = verdict(&circuit, &twin, &moved);
+            assert!(matches!(proof, Verdict::Different(_)), "{kind}: {proof:?}");
             let same = (solve(&twin.circuit, load(&twin.circuit)) - exact).norm() / exact.norm();
             assert!(same < 1e-14, "{kind}: {same:e}");
         }
