@@ -3,7 +3,8 @@
 // An allocator cannot be written without it; each call is handed on unchanged.
 #![allow(unsafe_code)]
 
-use bifilar::number::ComplexTwofold;
+use bifilar::number::{Affine, ComplexTwofold};
+use bifilar::solve::lanes::{Equations, Plan, Uses};
 use bifilar::solve::{Pattern, Solver};
 use num_complex::Complex64;
 use std::alloc::{GlobalAlloc, Layout, System};
@@ -99,4 +100,38 @@ fn points_after_the_first_two_allocate_nothing() {
     }
     assert!(per_point[0] > 0, "the counter counts");
     assert_eq!(per_point[2..], [0; 10], "{per_point:?}");
+}
+
+#[test]
+fn batches_of_frequencies_in_lanes_allocate_nothing() {
+    let pattern = grid();
+    let line = |i: usize, j: usize| {
+        let size = 1.0 + ((i + j) % 7) as f64;
+        let sign = if i == j { -6.0 } else { 1.0 };
+        Affine {
+            constant: Complex64::new(-size * sign, 0.0).into(),
+            slope: Complex64::new(0.0, -size * sign * 0.3).into(),
+        }
+    };
+    let columns = (0..pattern.n).flat_map(|j| {
+        let entries = pattern.column_start[j]..pattern.column_start[j + 1];
+        pattern.row[entries].iter().map(move |&i| line(i, j))
+    });
+    let equations = Equations {
+        entries: columns.collect(),
+        right: (0..pattern.n).map(|i| Affine::constant((i as f64).into())).collect(),
+        ..Equations::default()
+    };
+    let uses = Uses { refine: true, ..Uses::default() };
+    let plan = Plan::new(&pattern, &equations, 1.0, &[], uses).expect("a plan");
+    let mut workspace = plan.workspace(&equations);
+    let before = ALLOCATIONS.get();
+    for batch in 0..6 {
+        let frequencies: [f64; 16] = std::array::from_fn(|lane| (1 + batch * 16 + lane) as f64);
+        let good = plan.run(&mut workspace, &frequencies[..plan.lanes()]).iter();
+        assert!(good.clone().all(|verdict| verdict.is_good()));
+        plan.refine(&mut workspace);
+        assert!(workspace.left(0).0 < 1e-10);
+    }
+    assert_eq!(ALLOCATIONS.get() - before, 0);
 }
