@@ -24,7 +24,7 @@ pub struct Islands {
 }
 
 /// Union-find over nodes.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, Default)]
 pub struct Forest {
     parent: Vec<u32>,
 }
@@ -33,6 +33,11 @@ impl Forest {
     /// Every node a tree of its own.
     pub fn new(nodes: usize) -> Self {
         Forest { parent: (0..nodes as u32).collect() }
+    }
+
+    /// Adds a node, a tree of its own.
+    pub fn push(&mut self) {
+        self.parent.push(self.parent.len() as u32);
     }
 
     /// The root of a node's tree.

@@ -3,7 +3,6 @@
 use crate::circuit::Table;
 use crate::circuit::error::CircuitError;
 use crate::source::{SourceId, Sources, Span};
-use crate::text::ast::Text;
 use num_complex::Complex64;
 
 /// One row of a list of couplings.
@@ -47,7 +46,6 @@ pub(crate) fn read(source: SourceId, sources: &Sources, file: &str) -> Result<Ta
 pub(crate) fn read_couplings(
     source: SourceId,
     sources: &Sources,
-    _file: &Text,
 ) -> Result<Vec<CouplingRow>, CircuitError> {
     let mut list = Vec::new();
     for row in rows(source, sources) {

@@ -11,12 +11,10 @@ mod stamp;
 
 use crate::circuit::island::{Islands, Regime};
 use crate::circuit::{
-    Circuit, ElementId, Fault, FormulaId, Law, Measure, NodeId, Operation, Phase, Tape, Values,
+    Circuit, ElementId, Fault, FormulaId, Law, Measure, NodeId, Phase, Tape, Values,
 };
 use crate::number::Field;
 use crate::number::{Ball, Balls};
-use crate::quantity::Dimension;
-use crate::source::Span;
 
 /// A factor in the matrix or on the right-hand side.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -218,9 +216,4 @@ fn compress(n: usize, mut raw: Vec<stamp::Raw>) -> (Vec<usize>, Vec<usize>, Vec<
         column_start[i + 1] += column_start[i];
     }
     (column_start, row, stamps)
-}
-
-/// A formula made for a stamp; its place is that of the value it was made from.
-fn derive(tape: &mut Tape, operation: Operation, dimension: Dimension, span: Span) -> FormulaId {
-    tape.push(operation, dimension, span)
 }

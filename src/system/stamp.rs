@@ -10,7 +10,7 @@ use crate::circuit::{
 };
 use crate::quantity::{Decimal, Dimension};
 use crate::source::Span;
-use crate::system::{DriveStamp, Quantity, Through, derive};
+use crate::system::{DriveStamp, Quantity, Through};
 
 /// A stamp before the pattern is known.
 pub(super) struct Raw {
@@ -51,12 +51,12 @@ impl<'c> Stamper<'c> {
     ) -> Self {
         let mut tape = circuit.tape.clone();
         let nowhere = Span::default();
-        let f = derive(&mut tape, Operation::Frequency, Dimension::FREQUENCY, nowhere);
+        let f = tape.push(Operation::Frequency, Dimension::FREQUENCY, nowhere);
         let omega = elaborate::angular(&mut tape, f, nowhere);
-        let j = derive(&mut tape, Operation::ImaginaryUnit, Dimension::NONE, nowhere);
-        let s = derive(&mut tape, Operation::Product(j, omega), Dimension::FREQUENCY, nowhere);
+        let j = tape.push(Operation::ImaginaryUnit, Dimension::NONE, nowhere);
+        let s = tape.push(Operation::Product(j, omega), Dimension::FREQUENCY, nowhere);
         let one = Operation::Number(Decimal { mantissa: 1, exponent: 0 });
-        let one = derive(&mut tape, one, Dimension::NONE, nowhere);
+        let one = tape.push(one, Dimension::NONE, nowhere);
         let (raw, drives, through) = (Vec::new(), Vec::new(), Vec::new());
         Stamper { circuit, islands, of_node, of_branch, tape, s, one, raw, drives, through }
     }
@@ -276,7 +276,7 @@ impl<'c> Stamper<'c> {
 
     fn op(&mut self, operation: Operation, dimension: Dimension, from: FormulaId) -> FormulaId {
         let span = self.tape.get(from).span;
-        derive(&mut self.tape, operation, dimension, span)
+        self.tape.push(operation, dimension, span)
     }
 
     fn times_s(&mut self, value: FormulaId, dimension: Dimension) -> FormulaId {

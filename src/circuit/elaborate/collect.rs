@@ -150,7 +150,7 @@ impl<'a> Elaborator<'a> {
         for (link, name) in &path.steps {
             let right = self.node(scope, name);
             match link {
-                ast::Link::Wire(_) => self.join(left, right),
+                ast::Link::Wire(_) => _ = self.joined.join(left, right),
                 ast::Link::Elements(elements) => {
                     for element in elements {
                         // A stand-in until the value is lowered and says what the element is.
@@ -174,12 +174,6 @@ impl<'a> Elaborator<'a> {
             }
             left = right;
         }
-    }
-
-    fn join(&mut self, a: NodeId, b: NodeId) {
-        let (a, b) = (self.root(a), self.root(b));
-        let (low, high) = (a.min(b), a.max(b));
-        self.joined[high.index()] = low.0;
     }
 
     #[allow(clippy::too_many_arguments)] // one call for each part of an element

@@ -156,7 +156,7 @@ impl<'a> Elaborator<'a> {
 
     fn lower_from_file(&mut self, scope: ScopeId, file: &'a ast::Text) {
         let Some(&source) = self.input.data.get(&file.span) else { return };
-        let rows = match crate::circuit::table::read_couplings(source, self.input.sources, file) {
+        let rows = match crate::circuit::table::read_couplings(source, self.input.sources) {
             Ok(rows) => rows,
             Err(error) => return self.errors.push(error),
         };

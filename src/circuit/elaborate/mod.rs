@@ -15,6 +15,7 @@ pub(crate) use lower::children;
 
 use crate::circuit::error::CircuitError;
 use crate::circuit::formula::{FormulaId, Tape};
+use crate::circuit::island::Forest;
 use crate::circuit::{Circuit, Coupling, Element, ElementId, Ideal, Node, NodeId, Read, TableId};
 use crate::source::{SourceId, Sources, Span};
 use crate::text::ast;
@@ -110,8 +111,8 @@ struct Elaborator<'a> {
     node_of: HashMap<String, NodeId>,
     /// Nodes that were only ever named through an instance (`cm1.x`), with the place.
     mentioned: HashMap<NodeId, Span>,
-    /// Union-find over nodes joined by wires.
-    joined: Vec<u32>,
+    /// Nodes joined by wires.
+    joined: Forest,
     elements: Vec<Element>,
     element_of: HashMap<String, ElementId>,
     /// True once an element's value has said what it is.
@@ -152,7 +153,7 @@ impl<'a> Elaborator<'a> {
             nodes: Vec::new(),
             node_of: HashMap::new(),
             mentioned: HashMap::new(),
-            joined: Vec::new(),
+            joined: Forest::default(),
             elements: Vec::new(),
             element_of: HashMap::new(),
             known_law: Vec::new(),
@@ -183,19 +184,9 @@ impl<'a> Elaborator<'a> {
     fn make_node(&mut self, full_name: String, span: Span) -> NodeId {
         let id = NodeId(self.nodes.len() as u32);
         self.nodes.push(Node { names: vec![full_name.clone()], span });
-        self.joined.push(id.0);
+        self.joined.push();
         self.node_of.insert(full_name, id);
         id
-    }
-
-    fn root(&mut self, node: NodeId) -> NodeId {
-        let mut at = node.0;
-        while self.joined[at as usize] != at {
-            let up = self.joined[self.joined[at as usize] as usize];
-            self.joined[at as usize] = up;
-            at = up;
-        }
-        NodeId(at)
     }
 
     /// Elements first: couplings look at what they are, wherever they stand.
@@ -234,7 +225,7 @@ impl<'a> Elaborator<'a> {
         let mut nodes: Vec<Node> = Vec::new();
         for i in 0..self.nodes.len() {
             // The root is the smallest number of its group, so it is met first.
-            let root = self.root(NodeId(i as u32)).index();
+            let root = self.joined.root(NodeId(i as u32)).index();
             if root == i {
                 new_of[i] = NodeId(nodes.len() as u32);
                 nodes.push(self.nodes[i].clone());

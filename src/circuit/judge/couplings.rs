@@ -264,7 +264,7 @@ fn judge_set(circuit: &Circuit, set: &Set, found: &mut Vec<Diagnostic>) {
                 .help("|k| is at most 1: M is at most the square root of La·Lb"),
             );
         }
-        return found.push(impossible_set(circuit, set, &name, span_of));
+        return found.push(impossible_set(set, &name, span_of));
     }
     if smallest < NEAR_ONE {
         let names: Vec<_> = (0..n.min(4)).map(|i| format!("`{}`", name(i))).collect();
@@ -282,7 +282,6 @@ fn judge_set(circuit: &Circuit, set: &Set, found: &mut Vec<Diagnostic>) {
 }
 
 fn impossible_set<'c>(
-    circuit: &Circuit,
     set: &Set,
     name: &impl Fn(usize) -> &'c str,
     span_of: impl Fn(usize, usize) -> crate::source::Span,
@@ -296,7 +295,6 @@ fn impossible_set<'c>(
         list.join(", ")
     ))
     .at(span_of(0, first), "");
-    let _ = circuit;
     if n > LARGEST_TRIPLE_SEARCH {
         return base.help("the inductance matrix of a set must be positive semidefinite");
     }

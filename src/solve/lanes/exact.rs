@@ -19,6 +19,18 @@ impl From<Affine> for Line {
     }
 }
 
+impl Line {
+    /// Real and imaginary part at the frequency of each lane.
+    #[inline(always)]
+    fn at<const W: usize>(&self, frequency: &[f64; W]) -> (Sum<W>, Sum<W>) {
+        let Line { constant: c, slope: s } = self;
+        (
+            Sum::of_line((c.re.hi, s.re.hi), (c.re.lo, s.re.lo), frequency),
+            Sum::of_line((c.im.hi, s.im.hi), (c.im.lo, s.im.lo), frequency),
+        )
+    }
+}
+
 /// The values of the equations in the order of elimination, unrounded.
 #[derive(Clone, Debug, Default)]
 pub(super) struct ExactValues {
@@ -126,17 +138,7 @@ pub(super) fn residual<const W: usize>(listing: &Listing, buffers: &mut Buffers<
         buffers;
     let (mut at, mut next_extra, mut next_right) = (0, 0, 0);
     for (order, &count) in listing.counts.iter().enumerate() {
-        let b = &exact.right[order];
-        let mut re = Sum::of_line(
-            (b.constant.re.hi, b.slope.re.hi),
-            (b.constant.re.lo, b.slope.re.lo),
-            frequency,
-        );
-        let mut im = Sum::of_line(
-            (b.constant.im.hi, b.slope.im.hi),
-            (b.constant.im.lo, b.slope.im.lo),
-            frequency,
-        );
+        let (mut re, mut im) = exact.right[order].at(frequency);
         while let Some(&(row, which)) = exact.right_extras.get(next_right)
             && row as usize == order
         {
@@ -146,17 +148,7 @@ pub(super) fn residual<const W: usize>(listing: &Listing, buffers: &mut Buffers<
             next_right += 1;
         }
         for _ in 0..count {
-            let a = &exact.entries[at];
-            let mut a_re = Sum::of_line(
-                (a.constant.re.hi, a.slope.re.hi),
-                (a.constant.re.lo, a.slope.re.lo),
-                frequency,
-            );
-            let mut a_im = Sum::of_line(
-                (a.constant.im.hi, a.slope.im.hi),
-                (a.constant.im.lo, a.slope.im.lo),
-                frequency,
-            );
+            let (mut a_re, mut a_im) = exact.entries[at].at(frequency);
             while let Some(&(place, which)) = entries.extras.get(next_extra)
                 && place as usize == at
             {
