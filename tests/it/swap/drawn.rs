@@ -2,11 +2,12 @@
 
 use crate::exact;
 use crate::swap::agree::{assert_agrees, assert_same_reads, read, solvable};
-use bifilar::circuit::Circuit;
 use bifilar::circuit::island::{Islands, Regime};
 use bifilar::circuit::print::Printer;
+use bifilar::circuit::{Circuit, ElementId, Law, Measure, Operation};
+use bifilar::quantity::{Decimal, Dimension};
 use bifilar::study::pair::{Correspondence, Matching};
-use bifilar::study::prove::{self, Verdict};
+use bifilar::study::prove::{self, Difference, Verdict};
 use bifilar::swap::{self, Condition, Kind, Options, SwapError, Swapped, Twin};
 use fastrand::Rng;
 
@@ -195,9 +196,50 @@ fn twins_of_circuits_with_several_sets_and_blocks_agree() {
     assert!(counts.iter().all(|count| *count > 20), "{counts:?}");
 }
 
+/// The circuit with the inductance of one element a millionth larger.
+fn moved_by_a_millionth(circuit: &Circuit, leg: ElementId) -> Circuit {
+    let mut moved = circuit.clone();
+    let element = &mut moved.elements[leg.index()];
+    let Law::Winding { inductance, .. } = &mut element.law else {
+        unreachable!("a leg is a winding")
+    };
+    let factor = Operation::Number(Decimal { mantissa: 1_000_001, exponent: -6 });
+    let factor = moved.tape.push(factor, Dimension::NONE, element.span);
+    let product = Operation::Product(factor, *inductance);
+    *inductance = moved.tape.push(product, Dimension::INDUCTANCE, element.span);
+    moved
+}
+
+#[test]
+fn moved_legs_of_drawn_twins_are_told_apart_by_number_and_by_proof() {
+    let (mut legs, mut told) = (0, 0);
+    for seed in 0..12 {
+        let circuit = read(&draw(&mut Rng::with_seed(seed)));
+        for kind in [Kind::Tee, Kind::Pi, Kind::Mesh, Kind::Leakage] {
+            let Ok(twin) = swap::twin(&circuit, &Options::new(kind)) else { continue };
+            let names: Vec<&String> =
+                twin.records.iter().flat_map(|r| r.legs.iter().map(|leg| &leg.name)).collect();
+            let moved = twin.circuit.each_element().filter(|(_, element)| {
+                matches!(element.law, Law::Winding { .. }) && names.contains(&&element.name)
+            });
+            for (id, element) in moved {
+                legs += 1;
+                match verdict(&circuit, &twin, &moved_by_a_millionth(&twin.circuit, id)) {
+                    Verdict::Different(Difference::Quantity { shows_best: Some(_), .. }) => {
+                        told += 1;
+                    }
+                    // A leg without influence: both ends at nodes that are one.
+                    Verdict::Identical { .. } => {}
+                    other => panic!("seed {seed}, {kind}, {}: {other:?}", element.name),
+                }
+            }
+        }
+    }
+    assert!(legs > 60 && told * 20 >= legs * 19, "{told} of {legs} legs were told apart");
+}
+
 #[test]
 fn any_leg_moved_by_one_part_in_a_million_is_noticed() {
-    use bifilar::circuit::{Law, Measure};
     use bifilar::study::engine::Engine;
     let text = "gnd -( e: 10 V +)- a -( r: 5 Ω )- p -(* w1: 4 mH )- gnd\n\
                 q -(* w2: 9 mH )- gnd; q -( load: 20 Ω )- gnd; couple w1, w2 : k 0.5\n";
@@ -222,17 +264,7 @@ fn any_leg_moved_by_one_part_in_a_million_is_noticed() {
             .collect();
         assert_eq!(legs.len(), 3);
         for leg in legs {
-            let mut moved = twin.circuit.clone();
-            let span = moved.elements[leg.index()].span;
-            let Law::Winding { inductance, .. } = &mut moved.elements[leg.index()].law else {
-                unreachable!("a leg is a winding")
-            };
-            let (old, henry) = (*inductance, bifilar::quantity::Dimension::INDUCTANCE);
-            let factor = bifilar::quantity::Decimal { mantissa: 1_000_001, exponent: -6 };
-            let number = bifilar::circuit::Operation::Number(factor);
-            let number = moved.tape.push(number, bifilar::quantity::Dimension::NONE, span);
-            *inductance =
-                moved.tape.push(bifilar::circuit::Operation::Product(number, old), henry, span);
+            let moved = moved_by_a_millionth(&twin.circuit, leg);
             let off = (solve(&moved, load(&moved)) - exact).norm() / exact.norm();
             assert!(off > 1e-8, "{kind}: {off:e}");
             let proof = verdict(&circuit, &twin, &moved);
